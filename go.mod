@@ -1,0 +1,11 @@
+module modelmend
+
+go 1.26
+
+require (
+	github.com/go-echarts/go-echarts/v2 v2.6.7
+	github.com/santhosh-tekuri/jsonschema/v6 v6.0.3
+	github.com/spf13/cobra v1.10.2
+	go.yaml.in/yaml/v3 v3.0.5
+	gonum.org/v1/gonum v0.17.0
+)
