@@ -1,0 +1,211 @@
+package dataset
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+)
+
+// reading is the work on one text.
+type reading struct {
+	name      string
+	text      string
+	delimiter byte
+	builders  []*builder
+	table     *Table
+	blanks    int // lines left out
+}
+
+// build turns text into a table.
+func build(name, text string) (*Table, error) {
+	if strings.Trim(text, " \t\r\n") == "" {
+		return nil, &FileError{Path: name, Reason: NoContent, Found: "an empty file", Advice: "give a file with a row of column names and rows of values"}
+	}
+	r := &reading{name: name, text: text, delimiter: findDelimiter(text)}
+	r.table = &Table{Name: name, Delimiter: string(r.delimiter)}
+	s := newSplitter(text, r.delimiter)
+	if err := r.header(s); err != nil {
+		return nil, err
+	}
+	if err := r.rows(s); err != nil {
+		return nil, err
+	}
+	if r.table.Rows == 0 {
+		return nil, &FileError{Path: name, Reason: HeaderOnly, Found: "column names and no rows", Advice: "add rows of values below the names"}
+	}
+	comma, err := checkDecimals(name, r.builders, r.delimiter)
+	if err != nil {
+		return nil, err
+	}
+	r.secondReading()
+	for _, b := range r.builders {
+		b.finish()
+		r.table.Columns = append(r.table.Columns, b.column)
+	}
+	r.table.DecimalComma = comma
+	r.note()
+	return r.table, nil
+}
+
+func (r *reading) note() {
+	if r.table.DecimalComma {
+		r.table.Notes = append(r.table.Notes, commaNote(r.builders, r.delimiter))
+	}
+	if r.blanks > 0 {
+		r.table.Notes = append(r.table.Notes, fmt.Sprintf("%d blank lines between rows left out", r.blanks))
+	}
+}
+
+// header reads the names of the columns from the first line that is not blank.
+func (r *reading) header(s *splitter) error {
+	for {
+		line, ok, wrong := s.next()
+		if wrong != nil {
+			return r.layout(wrong)
+		}
+		if ok && s.blank() {
+			continue
+		}
+		names := make([]string, len(s.fields))
+		for i, f := range s.fields {
+			names[i] = strings.Clone(f.text)
+		}
+		if err := r.checkNames(names, line); err != nil {
+			return err
+		}
+		capacity := min(r.lineCount(), len(r.text)/len(names)+1)
+		for _, name := range names {
+			r.builders = append(r.builders, &builder{column: &Column{Name: name}, delimiter: r.delimiter, capacity: capacity})
+		}
+		r.table.Lines = make([]int, 0, capacity)
+		return nil
+	}
+}
+
+// lineCount is a bound on the rows that is close in most files.
+func (r *reading) lineCount() int {
+	return max(strings.Count(r.text, "\n"), strings.Count(r.text, "\r")) + 1
+}
+
+func (r *reading) checkNames(names []string, line int) error {
+	if !slices.ContainsFunc(names, func(s string) bool { return s == "" || !isNumber(s, r.delimiter) }) {
+		return &LayoutError{Path: r.name, Line: line, Reason: NumberHeader, Found: "a first row of numbers", Expected: "the names of the columns",
+			Advice: "add a first row with a name for each column"}
+	}
+	first := map[string]int{}
+	for i, name := range names {
+		if strings.Trim(name, " \t\r\n") == "" {
+			return &LayoutError{Path: r.name, Line: line, Field: i + 1, Reason: NoName, Found: "a column without a name", Expected: "a name for each column",
+				Advice: "name the column or delete it"}
+		}
+		if j, taken := first[name]; taken {
+			return &LayoutError{Path: r.name, Line: line, Field: i + 1, Reason: SameName, Found: "the name " + shown(name) + " again",
+				Expected: fmt.Sprintf("a name that field %d does not have already", j), Advice: "rename one of the two columns"}
+		}
+		first[name] = i + 1
+	}
+	return nil
+}
+
+// rows reads the rows after the header.
+func (r *reading) rows(s *splitter) error {
+	pending := 0 // blank lines seen since the last row
+	for {
+		line, ok, wrong := s.next()
+		if wrong != nil {
+			return r.layout(wrong)
+		}
+		if !ok {
+			return nil
+		}
+		if s.blank() {
+			pending++
+			continue
+		}
+		r.passBlanks(pending, line)
+		pending = 0
+		if len(s.fields) != len(r.builders) {
+			return r.ragged(line, len(s.fields))
+		}
+		for i, f := range s.fields {
+			r.builders[i].add(f, line)
+		}
+		r.table.Lines = append(r.table.Lines, line)
+		r.table.Rows++
+	}
+}
+
+// passBlanks treats blank lines before a row: rows with a missing value in a file of one column, else nothing.
+func (r *reading) passBlanks(count, line int) {
+	if len(r.builders) > 1 {
+		r.blanks += count
+		return
+	}
+	for i := range count {
+		r.builders[0].add(cell{}, line-count+i)
+		r.table.Lines = append(r.table.Lines, line-count+i)
+		r.table.Rows++
+	}
+}
+
+func (r *reading) ragged(line, fields int) error {
+	e := &LayoutError{Path: r.name, Line: line, Reason: Ragged, Found: count(fields, "field"),
+		Expected: fmt.Sprintf("%d, one for each column name", len(r.builders)), Advice: "add the missing values, or delete the line if it is not a row"}
+	if fields > len(r.builders) {
+		e.Advice = "put quotes around a value that holds the delimiter " + shown(string(r.delimiter)) + ", or name the additional columns"
+	}
+	return e
+}
+
+func count(n int, word string) string {
+	if n == 1 {
+		return "1 " + word
+	}
+	return fmt.Sprintf("%d %ss", n, word)
+}
+
+// layout turns a failure of the splitter into the error of the file.
+func (r *reading) layout(s *splitError) error {
+	e := &LayoutError{Path: r.name, Line: s.line, Character: s.character, Field: s.field, Reason: s.reason}
+	if s.reason == OpenQuote {
+		e.Found, e.Expected, e.Advice = "a quote that is not closed before the end of the file", `a second " after the value`,
+			"close the quote, or double it if it belongs to the value"
+		return e
+	}
+	e.Found, e.Expected, e.Advice = "text after a closed quote", "the delimiter "+shown(string(r.delimiter))+" or the end of the line",
+		"double a quote that belongs to the value"
+	return e
+}
+
+// secondReading gathers the codes of the columns where text came after numbers. The text was split once without an
+// error, so the same records come again.
+func (r *reading) secondReading() {
+	var which []*builder
+	var fields []int
+	for i, b := range r.builders {
+		if b.again {
+			b.rows = 0
+			b.startCodes()
+			which, fields = append(which, b), append(fields, i)
+		}
+	}
+	if len(which) == 0 {
+		return
+	}
+	s := newSplitter(r.text, r.delimiter)
+	header := true
+	for row := 0; row < r.table.Rows; {
+		s.next()
+		if s.blank() && (header || len(r.builders) > 1) {
+			continue
+		}
+		if header {
+			header = false
+			continue
+		}
+		for j, b := range which {
+			b.codeAgain(s.fields[fields[j]].text)
+		}
+		row++
+	}
+}

@@ -1,0 +1,98 @@
+package dataset
+
+import (
+	"bufio"
+	"crypto/sha256"
+	"encoding/hex"
+	"errors"
+	"fmt"
+	"io"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"strings"
+)
+
+// maxBytes bounds what is read into memory.
+const maxBytes = 4 << 30
+
+// otherEndings are formats that this version does not read.
+var otherEndings = []string{".gz", ".zst", ".bz2", ".xz", ".zip", ".xls", ".xlsx", ".ods", ".parquet", ".feather", ".arrow"}
+
+// ReadFile reads the table in a file.
+//
+// It returns a *FileError when the file cannot be opened or is no CSV or TSV file, a *LayoutError when its rows or
+// names are wrong, and a *CellError when a number cannot be read without a guess. Memory is that of the file and of
+// the columns: 8 bytes a number, 16 where decimals need them, 4 bytes and the distinct values for text.
+func ReadFile(path string) (*Table, error) {
+	ending := strings.ToLower(filepath.Ext(path))
+	for _, other := range otherEndings {
+		if ending == other {
+			return nil, &FileError{Path: path, Reason: OtherFormat, Found: "a " + ending + " file",
+				Advice: "this version reads CSV and TSV only, so save the table as CSV first"}
+		}
+	}
+	f, err := os.Open(path)
+	if err != nil {
+		return nil, openError(path, err)
+	}
+	defer f.Close()
+	info, err := f.Stat()
+	if err != nil {
+		return nil, openError(path, err)
+	}
+	if info.IsDir() {
+		return nil, &FileError{Path: path, Reason: Directory, Found: "a folder", Advice: "give the path of a file in it"}
+	}
+	return read(f, path, info.Size())
+}
+
+func openError(path string, err error) error {
+	if errors.Is(err, fs.ErrNotExist) {
+		return &FileError{Path: path, Reason: NotFound, Found: "no such file", Advice: "check the path and the folder you are in", Err: err}
+	}
+	if errors.Is(err, fs.ErrPermission) {
+		return &FileError{Path: path, Reason: Unreadable, Found: "a file that may not be read", Advice: "change its permissions", Err: err}
+	}
+	return &FileError{Path: path, Reason: Unreadable, Found: "a file that cannot be read (" + err.Error() + ")", Advice: "check the path and the disk", Err: err}
+}
+
+// Read reads the table that r gives; name stands for the path in messages and in the table. Errors are those of
+// ReadFile.
+func Read(r io.Reader, name string) (*Table, error) { return read(r, name, 0) }
+
+// read takes the size of the file where it is known, to make room at once.
+func read(r io.Reader, name string, size int64) (*Table, error) {
+	buffered := bufio.NewReaderSize(r, 1<<16)
+	head, err := buffered.Peek(4096)
+	if err != nil && !errors.Is(err, io.EOF) {
+		return nil, openError(name, err)
+	}
+	if err := checkHead(name, head); err != nil {
+		return nil, err
+	}
+	var content strings.Builder
+	if size > 0 && size <= maxBytes {
+		content.Grow(int(size) + 1)
+	}
+	hash := sha256.New()
+	n, err := io.Copy(io.MultiWriter(&content, hash), io.LimitReader(buffered, maxBytes+1))
+	if err != nil {
+		return nil, openError(name, err)
+	}
+	if n > maxBytes {
+		return nil, &FileError{Path: name, Reason: TooLarge, Found: fmt.Sprintf("more than %d bytes", int64(maxBytes)),
+			Advice: "leave out columns that the study does not need"}
+	}
+	text, notes, err := decode(name, content.String())
+	if err != nil {
+		return nil, err
+	}
+	t, err := build(name, text)
+	if err != nil {
+		return nil, err
+	}
+	t.Hash = hex.EncodeToString(hash.Sum(nil))
+	t.Notes = append(notes, t.Notes...)
+	return t, nil
+}
