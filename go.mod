@@ -9,3 +9,5 @@ require (
 	go.yaml.in/yaml/v3 v3.0.5
 	gonum.org/v1/gonum v0.17.0
 )
+
+require golang.org/x/text v0.23.0 // indirect

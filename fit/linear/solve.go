@@ -589,6 +589,9 @@ func (s *Sample) sandwich(m []float64) []number {
 
 // Embed returns A B A' for a basis A (p x m row-major) and B (m x m): the way back from fitted combinations to slopes.
 func Embed(p, m int, a, b []float64) []float64 {
+	if m == 0 {
+		return make([]float64, p*p)
+	}
 	var t, out mat.Dense
 	am := mat.NewDense(p, m, a)
 	t.Mul(am, mat.NewDense(m, m, b))

@@ -1,0 +1,237 @@
+package main
+
+import (
+	"fmt"
+	"path/filepath"
+	"slices"
+	"strconv"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"modelmend/compare"
+	"modelmend/fit/dataset"
+)
+
+// studyFlags are the flags that check and compare share: every study key has one, and a flag overrides the study.
+type studyFlags struct {
+	equation, purpose, rows, folds string
+	focal, keep, groups, smallest  []string
+	sets, skip, cutoffs            []string
+	constant, showSmall            bool
+	seed                           int64
+	workers                        int
+}
+
+func (f *studyFlags) register(cmd *cobra.Command) {
+	fl := cmd.Flags()
+	fl.StringVarP(&f.equation, "equation", "e", "", `the model, such as "ln(rent) = area + rooms + area^2"`)
+	fl.StringSliceVar(&f.focal, "focal", nil, "coefficients the paper is about")
+	fl.StringVar(&f.purpose, "purpose", "", "explain, predict or describe")
+	fl.StringArrayVar(&f.smallest, "smallest-effect", nil, "an effect smaller than this would not matter, such as area=0.002")
+	fl.StringSliceVar(&f.keep, "keep", nil, "regressors that are never dropped or merged")
+	fl.StringArrayVar(&f.groups, "group", nil, "regressors that measure one concept, such as size=area,rooms")
+	fl.StringVar(&f.rows, "rows", "", `the sample, such as "year <= 1959"`)
+	fl.StringArrayVar(&f.sets, "set", nil, "fix an option of a remedy, such as ridge.penalty=0.04")
+	fl.StringSliceVar(&f.skip, "skip", nil, "remedies to leave out")
+	fl.BoolVar(&f.constant, "constant", true, "the model has a constant")
+	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, or column:NAME")
+	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds")
+	fl.StringArrayVar(&f.cutoffs, "cutoff", nil, "a reference mark, such as vif=5, condition_index=30, variance_share=0.5")
+	fl.BoolVar(&f.showSmall, "show-small-cells", false, "name category levels with fewer than ten rows")
+	fl.IntVar(&f.workers, "workers", 0, "cores to use (0: all); the output does not depend on it")
+}
+
+// load reads the study or table named by arg, applies the flags, and reads the data.
+func (f *studyFlags) load(cmd *cobra.Command, arg string) (*compare.Study, *dataset.Table, error) {
+	study := newStudy()
+	path := arg
+	if isStudy(arg) {
+		var err error
+		if study, err = readStudy(arg); err != nil {
+			return nil, nil, err
+		}
+		if study.Data == "" {
+			return nil, nil, wrongUse("%s: the key data is missing; write the name of the table, such as data: flats.csv", arg)
+		}
+		path = study.Data
+		if !filepath.IsAbs(path) {
+			path = filepath.Join(filepath.Dir(arg), path)
+		}
+	} else {
+		study.Data = arg
+	}
+	if err := f.apply(cmd, study); err != nil {
+		return nil, nil, err
+	}
+	table, err := dataset.ReadFile(path)
+	if err != nil {
+		return nil, nil, err
+	}
+	table.Name = study.Data
+	if strings.TrimSpace(study.Equation) == "" {
+		return nil, nil, &usageError{noEquation(arg, table)}
+	}
+	return study, table, nil
+}
+
+// apply lets flags that were given override the study.
+func (f *studyFlags) apply(cmd *cobra.Command, s *compare.Study) error {
+	given := cmd.Flags().Changed
+	var err error
+	if given("equation") {
+		s.Equation = f.equation
+	}
+	if given("focal") {
+		s.Focal = f.focal
+	}
+	if given("keep") {
+		s.Keep = f.keep
+	}
+	if given("rows") {
+		s.Rows = f.rows
+	}
+	if given("purpose") {
+		if s.Purpose, err = purpose(f.purpose); err != nil {
+			return &usageError{err}
+		}
+	}
+	if given("constant") {
+		s.NoConstant = !f.constant
+	}
+	if given("seed") {
+		s.Seed = f.seed
+	}
+	if given("show-small-cells") {
+		s.ShowSmallCells = f.showSmall
+	}
+	if given("smallest-effect") {
+		s.SmallestEffect = nil
+		for _, v := range f.smallest {
+			name, value, err := assignment("--smallest-effect", v)
+			if err != nil {
+				return err
+			}
+			x, err := strconv.ParseFloat(value, 64)
+			if err != nil {
+				return wrongUse("--smallest-effect %s: %q is not a number", v, value)
+			}
+			s.SmallestEffect = append(s.SmallestEffect, compare.NamedNumber{Name: name, Value: x})
+		}
+	}
+	if given("group") {
+		s.Groups = nil
+		for _, v := range f.groups {
+			name, value, err := assignment("--group", v)
+			if err != nil {
+				return err
+			}
+			s.Groups = append(s.Groups, compare.NamedGroup{Name: name, Members: splitNames(value)})
+		}
+	}
+	for _, v := range f.cutoffs {
+		name, value, err := assignment("--cutoff", v)
+		if err != nil {
+			return err
+		}
+		x, err := strconv.ParseFloat(value, 64)
+		if err != nil {
+			return wrongUse("--cutoff %s: %q is not a number", v, value)
+		}
+		if err := setCutoff(&s.Cutoffs, name, x); err != nil {
+			return &usageError{err}
+		}
+	}
+	for _, v := range f.sets {
+		if err := applySet(s, v); err != nil {
+			return err
+		}
+	}
+	for _, v := range f.skip {
+		s.Remedies = append(s.Remedies, compare.RemedySetting{Remedy: v, Off: true})
+	}
+	if given("folds") {
+		if s.Folds, err = foldSpec(f.folds); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func assignment(flag, v string) (name, value string, err error) {
+	i := strings.LastIndex(v, "=")
+	if i <= 0 || i == len(v)-1 {
+		return "", "", wrongUse("%s %q: write NAME=VALUE", flag, v)
+	}
+	return strings.TrimSpace(v[:i]), strings.TrimSpace(v[i+1:]), nil
+}
+
+// splitNames splits at commas outside double quotes.
+func splitNames(v string) []string {
+	var out []string
+	quoted, start := false, 0
+	for i, r := range v {
+		switch {
+		case r == '"':
+			quoted = !quoted
+		case r == ',' && !quoted:
+			out = append(out, strings.TrimSpace(v[start:i]))
+			start = i + 1
+		}
+	}
+	return append(out, strings.TrimSpace(v[start:]))
+}
+
+func applySet(s *compare.Study, v string) error {
+	name, value, err := assignment("--set", v)
+	if err != nil {
+		return err
+	}
+	remedy, option, ok := strings.Cut(name, ".")
+	if !ok {
+		return wrongUse("--set %q: write REMEDY.OPTION=VALUE, such as ridge.penalty=0.04", v)
+	}
+	set := compare.RemedySetting{Remedy: remedy, Option: option, Names: splitNames(value)}
+	if set.Number, err = strconv.ParseFloat(value, 64); err != nil {
+		set.Number = nan()
+	}
+	s.Remedies = slices.DeleteFunc(s.Remedies, func(o compare.RemedySetting) bool { return o.Remedy == remedy && o.Option == option && !o.Off })
+	s.Remedies = append(s.Remedies, set)
+	return nil
+}
+
+func foldSpec(v string) (compare.FoldSpec, error) {
+	if v == "leave-one-out" {
+		return compare.FoldSpec{Kind: v}, nil
+	}
+	if c, ok := strings.CutPrefix(v, "column:"); ok && c != "" {
+		return compare.FoldSpec{Kind: "column", Columns: splitNames(c)}, nil
+	}
+	count, repeats, both := strings.Cut(v, "x")
+	f := compare.FoldSpec{Kind: "random"}
+	var err error
+	if f.Count, err = strconv.Atoi(count); err == nil && both {
+		f.Repeats, err = strconv.Atoi(repeats)
+	}
+	if err != nil || f.Count < 2 || (both && f.Repeats < 1) {
+		return f, wrongUse("--folds %q: write 10, 10x5, leave-one-out, or column:NAME", v)
+	}
+	return f, nil
+}
+
+// noEquation lists the columns and shows a command that would work.
+func noEquation(arg string, t *dataset.Table) error {
+	var b strings.Builder
+	fmt.Fprintf(&b, "no equation was given. %s has %d rows and these columns:\n", t.Name, t.Rows)
+	for i, c := range t.Columns {
+		if i == 40 {
+			fmt.Fprintf(&b, "  and %d more\n", len(t.Columns)-40)
+			break
+		}
+		fmt.Fprintf(&b, "  %-28s %s\n", c.Name, describeColumn(c))
+	}
+	if eq := exampleEquation(t); eq != "" {
+		fmt.Fprintf(&b, "Write, for example:\n  modelmend compare %s --equation %q", arg, eq)
+	}
+	return fmt.Errorf("%s", strings.TrimRight(b.String(), "\n"))
+}

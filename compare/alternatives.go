@@ -1,0 +1,532 @@
+package compare
+
+import (
+	"context"
+	"math"
+	"sync"
+
+	"modelmend/fit/linear"
+	"modelmend/fit/reduction"
+	"modelmend/fit/tail"
+	"modelmend/remedy"
+)
+
+// Alternative is one variant fitted to all rows, with its error on held-out rows.
+type Alternative struct {
+	Key         string
+	Remedy      remedy.Remedy
+	Variant     remedy.Variant
+	Fitted      *remedy.Fitted
+	Description remedy.Description
+	// Coefficients has the constant first where there is one, then every regressor; Derived holds effects of variables
+	// that enter several terms, then what the remedy adds.
+	Coefficients []Coefficient
+	Derived      []Coefficient
+	Covariance   []float64 // of Coefficients, q x q row-major; nil without degrees of freedom
+	S            float64   // residual standard deviation behind the standard errors
+	DF           float64
+	RSS          float64
+	R2           float64
+	Out          OutOfSample
+
+	value []float64 // (constant, slopes)
+	diff  []float64 // covariance of (value - as-is) over sigma^2, q x q
+	asIs  []float64
+	exact bool // as-is has a value for every coefficient
+	s0    float64
+}
+
+// Coefficient is one coefficient of an alternative, in the user's units.
+type Coefficient struct {
+	Name      string
+	Estimate  float64
+	SE        float64 // NaN beside a reason
+	SEReason  string
+	T, P      float64
+	Low, High float64
+	Status    remedy.Status
+	Bias      float64 // estimate minus as-is: the plug-in estimate of the bias; NaN where it has no meaning
+	MSE       float64 // variance + max(0, bias^2 - variance of the bias estimate), with the as-is residual variance
+	Posterior float64
+	Meaning   string
+}
+
+// OutOfSample is the error on held-out rows, everything learned inside the training rows.
+type OutOfSample struct {
+	RMSE, R2       float64
+	Difference     Interval // mean squared error, alternative minus as-is
+	RMSEDifference float64
+	Folds          []Fold
+	TestShare      float64 // n_test / n_train, averages over splits
+}
+
+// Interval is an estimate with its 95 % limits.
+type Interval struct{ Estimate, Low, High float64 }
+
+// Fold is one held-out fold.
+type Fold struct {
+	Repeat, Fold, Rows int
+	MSE                float64
+	Chosen             float64 // the tuning chosen inside; NaN without tuning
+	sse, sst           float64
+	train              int
+}
+
+func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) error {
+	sample := c.Problem.Sample
+	final := remedy.Training{Sample: sample, Final: true}
+	for r := range red.Parts {
+		for _, part := range red.Parts[r] {
+			train := linear.NewSample(red, red.Total.Minus(part))
+			final.Inner = append(final.Inner, remedy.Split{Train: train, Held: linear.NewHeldOut(red, part, train)})
+		}
+	}
+	c.Alternatives = make([]*Alternative, len(choices))
+	folds, err := c.outOfSample(ctx, red, choices, opt)
+	if err != nil {
+		return err
+	}
+	if err := each(ctx, len(choices), opt.Workers, func(i int) {
+		c.Alternatives[i] = c.alternative(choices[i], final)
+	}); err != nil {
+		return err
+	}
+	for i, a := range c.Alternatives {
+		a.Out = summarize(folds[i], folds[0])
+	}
+	return nil
+}
+
+// each runs f for 0..n-1 on so many workers; it stops handing out work once ctx is done.
+func each(ctx context.Context, n, workers int, f func(i int)) error {
+	next := make(chan int)
+	var wg sync.WaitGroup
+	for range max(1, workers) {
+		wg.Add(1)
+		go func() {
+			defer wg.Done()
+			for i := range next {
+				f(i)
+			}
+		}()
+	}
+	var err error
+	for i := range n {
+		if err = ctx.Err(); err != nil {
+			break
+		}
+		next <- i
+	}
+	close(next)
+	wg.Wait()
+	return err
+}
+
+// outOfSample learns every variant on the training rows of every fold and predicts the held-out ones. The inner folds of an outer
+// fold are the remaining outer folds: training rows = all minus that fold minus the inner one. Result: [variant][split].
+func (c *Comparison) outOfSample(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) ([][]Fold, error) {
+	type place struct{ repeat, fold int }
+	var places []place
+	for r := range red.Parts {
+		for f := range red.Parts[r] {
+			places = append(places, place{r, f})
+		}
+	}
+	out := make([][]Fold, len(choices))
+	for i := range out {
+		out[i] = make([]Fold, len(places))
+	}
+	var mu sync.Mutex
+	done := 0
+	err := each(ctx, len(places), opt.Workers, func(k int) {
+		p := places[k]
+		t, held := training(red, p.repeat, p.fold)
+		for i, ch := range choices {
+			fit := ch.variant.Learn(t)
+			f := Fold{Repeat: p.repeat, Fold: p.fold, Rows: held.N, sse: held.SSE(fit.Slopes), sst: held.SST(), Chosen: math.NaN(), train: t.Sample.N}
+			f.MSE = f.sse / float64(held.N)
+			if fit.Tuning != nil {
+				f.Chosen = fit.Tuning.Values[fit.Tuning.Chosen]
+			}
+			out[i][k] = f
+		}
+		if opt.Progress != nil {
+			mu.Lock()
+			done++
+			opt.Progress(done, len(places))
+			mu.Unlock()
+		}
+	})
+	return out, err
+}
+
+// training forms the training rows of one outer fold with their inner splits, and the held-out rows.
+func training(red *reduction.Reduction, repeat, fold int) (remedy.Training, *linear.HeldOut) {
+	part := red.Parts[repeat]
+	moments := red.Total.Minus(part[fold])
+	t := remedy.Training{Sample: linear.NewSample(red, moments)}
+	for g := range part {
+		if g == fold {
+			continue
+		}
+		train := linear.NewSample(red, moments.Minus(part[g]))
+		t.Inner = append(t.Inner, remedy.Split{Train: train, Held: linear.NewHeldOut(red, part[g], train)})
+	}
+	return t, linear.NewHeldOut(red, part[fold], t.Sample)
+}
+
+// summarize pools the folds of one alternative and compares them with those of as-is.
+func summarize(folds, asIs []Fold) OutOfSample {
+	o := OutOfSample{Folds: folds}
+	var sse, sst, rows, base float64
+	d := make([]float64, len(folds))
+	var test, train float64
+	for k, f := range folds {
+		sse += f.sse
+		sst += f.sst
+		base += asIs[k].sse
+		rows += float64(f.Rows)
+		d[k] = f.MSE - asIs[k].MSE
+		test += float64(f.Rows)
+		train += float64(f.train)
+	}
+	o.RMSE = math.Sqrt(sse / rows)
+	o.R2 = 1 - sse/sst
+	o.RMSEDifference = o.RMSE - math.Sqrt(base/rows)
+	o.TestShare = test / train
+	o.Difference = PairedInterval(d, o.TestShare)
+	return o
+}
+
+// PairedInterval returns the mean of the per-split differences d_1..d_J in mean squared error with a 95 % interval that allows for
+// overlapping training sets:
+//
+//	dbar +- t_{J-1} sqrt( S^2 (1/J + share) ),  S^2 the sample variance of the d_j, share = n_test/n_train.
+//
+// No unbiased estimate of that variance exists (Bengio and Grandvalet 2004). The limits are NaN for fewer than two splits.
+//
+// Source: Nadeau and Bengio (2003), Machine Learning 52(3), 239-281.
+func PairedInterval(d []float64, share float64) Interval {
+	j := float64(len(d))
+	mean := 0.0
+	for _, v := range d {
+		mean += v
+	}
+	mean /= j
+	if j < 2 {
+		return Interval{mean, math.NaN(), math.NaN()}
+	}
+	s2 := 0.0
+	for _, v := range d {
+		s2 += (v - mean) * (v - mean)
+	}
+	s2 /= j - 1
+	half := tail.TQuantile(0.95, j-1) * math.Sqrt(s2*(1/j+share))
+	return Interval{mean, mean - half, mean + half}
+}
+
+// alternative fits one variant to all rows and states it on the user's regressors.
+func (c *Comparison) alternative(ch choice, final remedy.Training) *Alternative {
+	sample := c.Problem.Sample
+	a := &Alternative{Key: ch.variant.Key, Remedy: ch.remedy, Variant: ch.variant}
+	a.Fitted = ch.variant.Learn(final)
+	a.RSS = sample.RSS(a.Fitted.Slopes)
+	a.S, a.DF = c.S, c.DF
+	if ch.variant.OwnVariance {
+		a.DF = float64(sample.N - a.Fitted.Columns)
+		if sample.Constant {
+			a.DF--
+		}
+		a.S = math.NaN()
+		if a.DF > 0 {
+			a.S = math.Sqrt(a.RSS / a.DF)
+		}
+	}
+	a.R2 = 1 - a.RSS/sample.YY.Float()
+	f := &remedy.Final{Problem: c.Problem, Fitted: a.Fitted, RSS: a.RSS, AsIs: c.AsIs, S: c.S, DF: c.DF, Constant: c.AsIs.Constant(sample)}
+	a.Description = ch.variant.Describe(f)
+	c.state(a)
+	return a
+}
+
+// state fills the coefficients of an alternative.
+func (c *Comparison) state(a *Alternative) {
+	sample := c.Problem.Sample
+	k := 0
+	if sample.Constant {
+		k = 1
+		a.value = []float64{sample.ConstantFor(a.Fitted.Slopes)}
+		a.asIs = []float64{c.AsIs.Constant(sample)}
+		if a.Key == "as-is" {
+			a.value[0] = a.asIs[0]
+		}
+	}
+	a.value = append(a.value, a.Fitted.Slopes...)
+	a.asIs = append(a.asIs, c.AsIs.Slopes...)
+	a.exact = c.AsIs.NotIdentified == nil
+	a.s0 = c.S
+	q := len(a.value)
+	factor := a.Fitted.Factor
+	cross := a.Fitted.Cross
+	if cross == nil {
+		cross = factor
+	}
+	if a.exact {
+		a.diff = difference(factor, cross, c.AsIs.Factor(sample))
+	}
+	status := a.Fitted.Status
+	if a.Description.Status != nil {
+		status = a.Description.Status
+	}
+	identity := a.Description.Report == nil
+	for i := range q {
+		w := make([]float64, q)
+		if identity {
+			w[i] = 1
+		} else {
+			copy(w, a.Description.Report[i*q:(i+1)*q])
+		}
+		st := remedy.Estimated
+		name := "constant"
+		if i >= k {
+			name = c.Problem.Names[i-k]
+			if status != nil {
+				st = status[i-k]
+			}
+		} else if !identity {
+			st = remedy.Different
+		} else if c.constantTouched(status) {
+			st = remedy.NotIdentified
+		}
+		coef := c.coefficient(a, name, w, st)
+		coef.Meaning = meaningOf(a.Description.Meaning, name)
+		if i >= k && a.Fitted.Posterior != nil {
+			coef.Posterior = c.S * math.Sqrt(a.Fitted.Posterior[i-k])
+		}
+		a.Coefficients = append(a.Coefficients, coef)
+	}
+	if !math.IsNaN(a.S) {
+		a.Covariance = covariance(a.Description.Report, factor, q, a.S*a.S)
+	}
+	for _, e := range c.effects() {
+		w := make([]float64, q)
+		copy(w[k:], e.weights)
+		coef := c.coefficient(a, e.name, w, combined(status, e.weights))
+		coef.Meaning = "the change in " + c.Design.Dependent + " for one more unit of " + e.variable + ", all terms with it together, at the sample means"
+		a.Derived = append(a.Derived, coef)
+	}
+	for _, dv := range a.Description.Derived {
+		coef := c.coefficient(a, dv.Name, dv.Weights, dv.Status)
+		coef.Bias, coef.MSE = math.NaN(), math.NaN() // as-is has no such coefficient
+		coef.Meaning = dv.Meaning
+		a.Derived = append(a.Derived, coef)
+	}
+}
+
+// constantTouched: in an exact dependency that involves a shift the constant has no value of its own either.
+func (c *Comparison) constantTouched(status []remedy.Status) bool {
+	if status == nil {
+		return false
+	}
+	for _, d := range c.Diagnosis.Dependencies {
+		if d.Kind != "exact" || d.Constant == 0 {
+			continue
+		}
+		for _, j := range d.Members() {
+			if status[j] == remedy.NotIdentified {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+func meaningOf(list []remedy.Meaning, name string) string {
+	general := ""
+	for _, m := range list {
+		if m.Coefficient == name {
+			return m.Text
+		}
+		if m.Coefficient == "" {
+			general = m.Text
+		}
+	}
+	if name == "constant" {
+		return ""
+	}
+	return general
+}
+
+// combined is the status of a combination of slopes.
+func combined(status []remedy.Status, weights []float64) remedy.Status {
+	if status == nil {
+		return remedy.Estimated
+	}
+	out, zero := remedy.Estimated, true
+	for j, w := range weights {
+		if w == 0 {
+			continue
+		}
+		switch status[j] {
+		case remedy.NotIdentified:
+			return remedy.NotIdentified
+		case remedy.Zero:
+			continue
+		case remedy.Implied:
+			out = remedy.Implied
+		}
+		zero = false
+	}
+	if zero {
+		return remedy.Zero
+	}
+	return out
+}
+
+// coefficient states the combination w of (constant, slopes).
+func (c *Comparison) coefficient(a *Alternative, name string, w []float64, st remedy.Status) Coefficient {
+	nan := math.NaN()
+	out := Coefficient{Name: name, SE: nan, T: nan, P: nan, Low: nan, High: nan, Status: st, Bias: nan, MSE: nan, Posterior: nan}
+	out.Estimate = dot(w, a.value)
+	if st == remedy.NotIdentified {
+		out.Estimate = nan
+		out.SEReason = "not identified: it takes part in an exact dependency"
+		return out
+	}
+	v := form(w, a.Fitted.Factor)
+	switch {
+	case st == remedy.Zero:
+		out.Estimate = 0
+		out.SEReason = "set to zero"
+	case math.IsNaN(a.S):
+		out.SEReason = "no degrees of freedom are left for the residual variance"
+	default:
+		out.SE = a.S * math.Sqrt(math.Max(0, v))
+		t := tail.TQuantile(0.95, a.DF)
+		out.Low, out.High = out.Estimate-t*out.SE, out.Estimate+t*out.SE
+		if out.SE > 0 {
+			out.T = out.Estimate / out.SE
+			out.P = tail.T(out.T, a.DF)
+		}
+	}
+	if a.exact && st != remedy.Different {
+		out.Bias = out.Estimate - dot(w, a.asIs)
+		if a.Key == "as-is" {
+			out.Bias = 0
+		}
+		if !math.IsNaN(a.s0) {
+			out.MSE = meanSquaredError(a.s0, v, form(w, a.diff), out.Bias, st)
+		}
+	}
+	return out
+}
+
+// meanSquaredError estimates variance plus squared bias; the squared plug-in bias is too large by its own variance, which is
+// taken off.
+func meanSquaredError(s, variance, diff, bias float64, st remedy.Status) float64 {
+	if st == remedy.Zero {
+		variance = 0
+	}
+	s2 := s * s
+	return s2*math.Max(0, variance) + math.Max(0, bias*bias-s2*math.Max(0, diff))
+}
+
+// difference is Var(alternative - as-is)/sigma^2 = F + F0 - C - C'.
+func difference(factor, cross, asIs []float64) []float64 {
+	q := int(math.Round(math.Sqrt(float64(len(asIs)))))
+	out := make([]float64, len(asIs))
+	for i := range q {
+		for j := range q {
+			out[i*q+j] = factor[i*q+j] + asIs[i*q+j] - cross[i*q+j] - cross[j*q+i]
+		}
+	}
+	return out
+}
+
+func dot(a, b []float64) float64 {
+	v := 0.0
+	for i := range a {
+		if a[i] != 0 {
+			v += a[i] * b[i]
+		}
+	}
+	return v
+}
+
+func form(w, m []float64) float64 {
+	q := len(w)
+	v := 0.0
+	for i := range q {
+		if w[i] == 0 {
+			continue
+		}
+		for j := range q {
+			if w[j] != 0 {
+				v += w[i] * m[i*q+j] * w[j]
+			}
+		}
+	}
+	return v
+}
+
+func covariance(report, factor []float64, q int, s2 float64) []float64 {
+	out := factor
+	if report != nil {
+		out = linear.Embed(q, q, report, factor)
+	}
+	scaled := make([]float64, len(out))
+	for i, v := range out {
+		scaled[i] = s2 * v
+	}
+	return scaled
+}
+
+// effect is the derivative of the dependent variable with respect to one raw column at the sample means.
+type effect struct {
+	name, variable string
+	weights        []float64
+}
+
+// effects are those of the variables behind the focal coefficients that enter several terms.
+func (c *Comparison) effects() []effect {
+	var out []effect
+	seen := map[string]bool{}
+	for _, j := range c.Focal {
+		for _, v := range c.Design.Regressors[j].Variables {
+			if seen[v] {
+				continue
+			}
+			seen[v] = true
+			if w, ok := c.Design.Effect(v); ok {
+				out = append(out, effect{"effect of " + v, v, w})
+			}
+		}
+	}
+	return out
+}
+
+// PathPoint is the fit of a tuned alternative at one value of its tuning.
+type PathPoint struct {
+	Coefficients []Coefficient
+	Derived      []Coefficient
+}
+
+// Path states every value of the tuning as the alternative itself is stated: the slider's steps. It is nil where
+// nothing is tuned. Cost O(p^3) a value.
+func (c *Comparison) Path(a *Alternative) []PathPoint {
+	t := a.Fitted.Tuning
+	if t == nil {
+		return nil
+	}
+	var out []PathPoint
+	for i := range t.Values {
+		f := &remedy.Fitted{Slopes: t.Slopes[i], Factor: t.Factor(i)}
+		if t.Cross != nil {
+			f.Cross = t.Cross(i)
+		}
+		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF}
+		c.state(step)
+		out = append(out, PathPoint{step.Coefficients, step.Derived})
+	}
+	return out
+}

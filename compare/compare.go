@@ -1,0 +1,394 @@
+package compare
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"runtime"
+	"slices"
+	"sort"
+	"strings"
+
+	"modelmend/fit/collinear"
+	"modelmend/fit/dataset"
+	"modelmend/fit/design"
+	"modelmend/fit/equation"
+	"modelmend/fit/folds"
+	"modelmend/fit/linear"
+	"modelmend/fit/reduction"
+	"modelmend/remedy"
+)
+
+// Options bound a run without changing its result.
+type Options struct {
+	Workers  int                    // 0: one a core
+	Progress func(done, total int)  // called from one goroutine at a time; may be nil
+	Warn     func(code, msg string) // may be nil
+}
+
+// Comparison is everything that is known once all alternatives are fitted.
+type Comparison struct {
+	Study         *Study
+	Table         *dataset.Table
+	Equation      *equation.Equation
+	Design        *design.Design
+	Plan          *folds.Plan // nil after Check
+	Diagnosis     *collinear.Report
+	Digits        float64 // vouched for
+	Problem       *remedy.Problem
+	Focal         []int // declared, or the most tangled regressor
+	FocalDeclared bool
+	Smallest      []float64 // smallest effect of interest by regressor, NaN where none is declared
+	AsIs          *linear.Fit
+	S             float64 // residual standard deviation of as-is, NaN without degrees of freedom
+	DF            float64
+	Ledger        []LedgerEntry
+	Alternatives  []*Alternative
+	NotApplicable []NotApplicable
+	Notes         []design.Note
+}
+
+// NotApplicable is a remedy or variant that is not offered, and why.
+type NotApplicable struct {
+	Key, Remedy, Reason string
+}
+
+// MostAlternatives bounds the ladder: beyond it, drops of the least tangled regressors are left out.
+const MostAlternatives = 40
+
+// Check diagnoses only: design, inflation factors, dependencies, ledger.
+func Check(ctx context.Context, t *dataset.Table, study *Study, opt Options) (*Comparison, error) {
+	c, _, err := prepare(ctx, t, study, opt, false)
+	return c, err
+}
+
+// Run diagnoses and fits every alternative. The result does not depend on Options.
+//
+// Cost: one pass over the rows a repeat, then per split and variant O(p^3).
+func Run(ctx context.Context, t *dataset.Table, study *Study, opt Options) (*Comparison, error) {
+	c, red, err := prepare(ctx, t, study, opt, true)
+	if err != nil {
+		return nil, err
+	}
+	variants := c.variants()
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
+	if err := c.fitAll(ctx, red, variants, opt); err != nil {
+		return nil, err
+	}
+	return c, nil
+}
+
+func prepare(ctx context.Context, t *dataset.Table, study *Study, opt Options, folded bool) (*Comparison, *reduction.Reduction, error) {
+	if opt.Workers <= 0 {
+		opt.Workers = runtime.GOMAXPROCS(0)
+	}
+	c := &Comparison{Study: study, Table: t}
+	var err error
+	if c.Equation, err = equation.Parse(study.Equation); err != nil {
+		return nil, nil, err
+	}
+	var cond *equation.Condition
+	if strings.TrimSpace(study.Rows) != "" {
+		if cond, err = equation.ParseCondition(study.Rows); err != nil {
+			return nil, nil, err
+		}
+	}
+	if c.Design, err = design.Build(t, c.Equation, design.Options{NoConstant: study.NoConstant, Rows: cond, ShowSmallCells: study.ShowSmallCells}); err != nil {
+		return nil, nil, err
+	}
+	c.Notes = append(c.Notes, c.Design.Notes...)
+	var assignment [][]int32
+	var counts []int
+	if folded {
+		if c.Plan, err = plan(c.Design, study, c.labels); err != nil {
+			return nil, nil, err
+		}
+		assignment, counts = c.Plan.Assignment, c.Plan.Counts
+	}
+	if err := ctx.Err(); err != nil {
+		return nil, nil, err
+	}
+	d := c.Design
+	red, err := reduction.Reduce(d.Columns(), d.Y, d.Constant, assignment, counts, opt.Workers)
+	if err != nil {
+		return nil, nil, err
+	}
+	sample := linear.NewSample(red, red.Total)
+	c.diagnose(red, sample, opt)
+	if err := c.problem(sample); err != nil {
+		return nil, nil, err
+	}
+	c.fitAsIs(sample)
+	c.ledger()
+	return c, red, nil
+}
+
+// labels gives the values of a fold column as text, for the rows used.
+func (c *Comparison) labels(column string) ([]string, error) {
+	col, ok := c.Table.Column(column)
+	if !ok {
+		advice := ""
+		if near := equation.Nearest(column, c.Table.Names()); len(near) > 0 {
+			advice = "did you mean " + strings.Join(near, " or ") + "?"
+		}
+		return nil, &StudyError{"folds", fmt.Sprintf("%s has no column %q", c.Table.Name, column), advice}
+	}
+	out := make([]string, len(c.Design.Index))
+	for i, row := range c.Design.Index {
+		if col.IsMissing(row) {
+			return nil, &StudyError{"folds", fmt.Sprintf("column %q misses a value in line %d", column, c.Table.Lines[row]), "give every row a fold"}
+		}
+		if col.Kind == dataset.Text {
+			out[i] = col.Levels[col.Codes[row]]
+		} else {
+			out[i] = col.Value(row).String()
+		}
+	}
+	return out, nil
+}
+
+func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, opt Options) {
+	d := c.Design
+	in := collinear.Input{Names: d.Names(), Sample: sample, Raw: linear.NewRawSample(red, red.Total), Columns: d.Columns(), Lines: d.Lines, Cutoffs: c.Study.Cutoffs}
+	for _, r := range d.Regressors {
+		in.Decimals = append(in.Decimals, r.Decimals)
+	}
+	for _, t := range d.Terms {
+		in.Groups = append(in.Groups, collinear.Group{Name: t.Name, Columns: t.Columns, Category: t.Category, Products: t.Products})
+	}
+	if cols, differ := d.Centered(); differ && d.Constant {
+		if cr, err := reduction.Reduce(cols, d.Y, d.Constant, nil, nil, opt.Workers); err == nil {
+			in.Centered = linear.NewSample(cr, cr.Total)
+			in.CenteredRaw = linear.NewRawSample(cr, cr.Total)
+		}
+	}
+	c.Diagnosis = collinear.Diagnose(in)
+	largest := 1.0
+	for _, v := range c.Diagnosis.ScaledIndex {
+		if !math.IsInf(v, 1) {
+			largest = math.Max(largest, v)
+		}
+	}
+	c.Digits = linear.VouchedDigits(largest)
+}
+
+func (c *Comparison) problem(sample *linear.Sample) error {
+	d, study := c.Design, c.Study
+	p := len(d.Regressors)
+	focal, err := resolveAll(d, "focal", study.Focal)
+	if err != nil {
+		return err
+	}
+	keep, err := resolveAll(d, "keep", study.Keep)
+	if err != nil {
+		return err
+	}
+	pr := &remedy.Problem{Names: d.Names(), Constant: d.Constant, Focal: marks(p, focal), Keep: marks(p, keep), Tangled: c.Diagnosis.Tangled, Sample: sample}
+	for _, r := range d.Regressors {
+		var m []remedy.Factor
+		for _, f := range r.Factors {
+			m = append(m, remedy.Factor{Atom: f.Atom, Power: f.Power})
+		}
+		pr.Monomials = append(pr.Monomials, m)
+		pr.Category = append(pr.Category, r.Category)
+	}
+	if pr.Settings, _, err = settings(d, study.Remedies); err != nil {
+		return err
+	}
+	c.Smallest = make([]float64, p)
+	for j := range c.Smallest {
+		c.Smallest[j] = math.NaN()
+	}
+	for _, s := range study.SmallestEffect {
+		cols, err := resolve(d, "smallest_effect", s.Name)
+		if err != nil {
+			return err
+		}
+		if !(s.Value > 0) || math.IsInf(s.Value, 0) {
+			return &StudyError{"smallest_effect", fmt.Sprintf("%g for %s is not a size", s.Value, s.Name), "write a positive number in the units of the coefficient"}
+		}
+		for _, j := range cols {
+			c.Smallest[j] = s.Value
+		}
+	}
+	if pr.Groups, err = c.groups(focal, keep); err != nil {
+		return err
+	}
+	pr.Penalties = penalties(sample)
+	pr.Rows = func(yield func(x []float64, y float64)) {
+		x := make([]float64, p)
+		for i := range d.Rows {
+			for j := range x {
+				x[j] = d.Regressors[j].Values.Hi[i]
+			}
+			yield(x, d.Y.Hi[i])
+		}
+	}
+	c.Problem = pr
+	c.Focal, c.FocalDeclared = focal, len(focal) > 0
+	if !c.FocalDeclared {
+		c.Focal = []int{c.mostTangled()}
+		c.Notes = append(c.Notes, design.Note{Code: "no-focal", Text: fmt.Sprintf("no coefficient of interest was named; the verdict speaks of %s, the most entangled one: name yours with focal", d.Regressors[c.Focal[0]].Name)})
+	}
+	return nil
+}
+
+// mostTangled is the regressor with the highest factor after centring; exact dependencies come first.
+func (c *Comparison) mostTangled() int {
+	best := 0
+	for j, v := range c.Diagnosis.CenteredVIF {
+		if v > c.Diagnosis.CenteredVIF[best] {
+			best = j
+		}
+	}
+	return best
+}
+
+// groups are the user's, then those proposed from substantive tangles: never with a focal or kept regressor, a dummy, or a
+// variable that enters powers or products.
+func (c *Comparison) groups(focal, keep []int) ([]remedy.Group, error) {
+	var out []remedy.Group
+	d := c.Design
+	for _, g := range c.Study.Groups {
+		if _, taken := c.Table.Column(g.Name); taken || slices.Contains(d.Names(), g.Name) {
+			return nil, &StudyError{"groups", fmt.Sprintf("%q is also the name of a column", g.Name), "give the group another name"}
+		}
+		cols, err := resolveAll(d, "groups: "+g.Name, g.Members)
+		if err != nil {
+			return nil, err
+		}
+		if len(cols) < 2 {
+			return nil, &StudyError{"groups", fmt.Sprintf("group %q has %d member", g.Name, len(cols)), "a group needs at least two regressors"}
+		}
+		for _, o := range out {
+			if o.Name == g.Name {
+				return nil, &StudyError{"groups", fmt.Sprintf("two groups are called %q", g.Name), "rename one"}
+			}
+		}
+		out = append(out, remedy.Group{Name: g.Name, Columns: cols, ByUser: true})
+	}
+	for _, dep := range c.Diagnosis.Dependencies {
+		if dep.Kind != collinear.Substantive && dep.Kind != collinear.Exact {
+			continue
+		}
+		var cols []int
+		for _, j := range dep.Members() {
+			if !slices.Contains(focal, j) && !slices.Contains(keep, j) && c.mergeable(j) {
+				cols = append(cols, j)
+			}
+		}
+		sort.Ints(cols)
+		if len(cols) < 2 || slices.ContainsFunc(out, func(g remedy.Group) bool { return sameSet(g.Columns, cols) }) {
+			continue
+		}
+		var names []string
+		for _, j := range cols {
+			names = append(names, d.Regressors[j].Name)
+		}
+		out = append(out, remedy.Group{Name: strings.Join(names, "+"), Columns: cols})
+	}
+	return out, nil
+}
+
+// mergeable regressors are numbers or functions that enter no power or product.
+func (c *Comparison) mergeable(j int) bool {
+	r := c.Design.Regressors[j]
+	if r.Kind != design.Number && r.Kind != design.Function && r.Kind != design.Ratio {
+		return false
+	}
+	for k, o := range c.Design.Regressors {
+		if k == j {
+			continue
+		}
+		for _, f := range o.Factors {
+			if f.Atom == r.Name {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+func sameSet(a, b []int) bool {
+	a, b = slices.Clone(a), slices.Clone(b)
+	sort.Ints(a)
+	sort.Ints(b)
+	return slices.Equal(a, b)
+}
+
+// penalties is the grid: zero and 100 values evenly spaced in logarithms from a thousandth of the smallest nonzero
+// eigenvalue of the correlation matrix (never under 1e-10) to ten times the largest.
+func penalties(s *linear.Sample) []float64 {
+	sp := s.Spectrum(nil)
+	out := []float64{0}
+	if sp.Rank == 0 {
+		return out
+	}
+	smallest := sp.Sigma[sp.Rank-1]
+	lo := math.Max(1e-10, 1e-3*smallest*smallest)
+	hi := 10 * sp.Sigma[0] * sp.Sigma[0]
+	for i := range 100 {
+		out = append(out, math.Exp(math.Log(lo)+(math.Log(hi)-math.Log(lo))*float64(i)/99))
+	}
+	return out
+}
+
+func (c *Comparison) fitAsIs(s *linear.Sample) {
+	c.AsIs = s.LeastSquares(true)
+	c.DF = float64(s.N - c.AsIs.Rank)
+	if s.Constant {
+		c.DF--
+	}
+	c.S = math.NaN()
+	if c.DF > 0 {
+		c.S = math.Sqrt(c.AsIs.RSS / c.DF)
+	}
+}
+
+// choice is a variant with its remedy.
+type choice struct {
+	remedy  remedy.Remedy
+	variant remedy.Variant
+}
+
+func (c *Comparison) variants() []choice {
+	_, off, _ := settings(c.Design, c.Study.Remedies)
+	var out []choice
+	for _, r := range remedy.All() {
+		if off[r.Key] {
+			c.NotApplicable = append(c.NotApplicable, NotApplicable{r.Key, r.Key, "switched off in the study"})
+			continue
+		}
+		vs, not := r.Variants(c.Problem)
+		for _, n := range not {
+			c.NotApplicable = append(c.NotApplicable, NotApplicable{n.Key, r.Key, n.Reason})
+		}
+		for _, v := range vs {
+			out = append(out, choice{r, v})
+		}
+	}
+	return c.capped(out)
+}
+
+// capped leaves out drops of the least tangled regressors beyond MostAlternatives.
+func (c *Comparison) capped(all []choice) []choice {
+	for len(all) > MostAlternatives {
+		worst, least := -1, math.Inf(1)
+		for i, ch := range all {
+			if len(ch.variant.Removes) > 0 {
+				if v := c.Diagnosis.VIF[ch.variant.Removes[0]]; v <= least {
+					worst, least = i, v
+				}
+			}
+		}
+		if worst < 0 {
+			return all
+		}
+		c.NotApplicable = append(c.NotApplicable, NotApplicable{all[worst].variant.Key, all[worst].remedy.Key,
+			fmt.Sprintf("left out: more than %d alternatives, and this regressor is among the least tangled", MostAlternatives)})
+		all = slices.Delete(all, worst, worst+1)
+	}
+	return all
+}

@@ -1,0 +1,139 @@
+package compare
+
+import (
+	"fmt"
+	"math"
+	"strconv"
+
+	"modelmend/fit/tail"
+)
+
+// LedgerEntry splits the standard error of one as-is coefficient into its four causes,
+//
+//	SE = s / (sqrt(n-1) sd) * sqrt(VIF),
+//
+// and sets beside it the error at VIF = 1, which holds the estimate, s and sd fixed: another sample would bring others.
+type LedgerEntry struct {
+	Column                      int
+	Focal                       bool
+	Estimate, S, OwnSD, VIF     float64
+	Rows                        int
+	SE, SEUntangled             float64
+	Low, High                   float64
+	LowUntangled, HighUntangled float64
+	SmallestEffect              float64 // NaN where none is declared
+	ConclusionChanges           bool
+	Reason                      string
+	Sentence                    string
+}
+
+func (c *Comparison) ledger() {
+	order := append([]int{}, c.Focal...)
+	for j := range c.Problem.Names {
+		if !contains(c.Focal, j) {
+			order = append(order, j)
+		}
+	}
+	for _, j := range order {
+		c.Ledger = append(c.Ledger, c.entry(j))
+	}
+}
+
+func contains(set []int, j int) bool {
+	for _, i := range set {
+		if i == j {
+			return true
+		}
+	}
+	return false
+}
+
+func (c *Comparison) entry(j int) LedgerEntry {
+	nan := math.NaN()
+	s := c.Problem.Sample
+	name := c.Problem.Names[j]
+	e := LedgerEntry{Column: j, Focal: contains(c.Focal, j), Estimate: c.AsIs.Slopes[j], S: c.S, OwnSD: s.SD(j), VIF: c.Diagnosis.VIF[j], Rows: s.N,
+		SE: nan, SEUntangled: nan, Low: nan, High: nan, LowUntangled: nan, HighUntangled: nan, SmallestEffect: c.Smallest[j]}
+	if c.AsIs.NotIdentified != nil && c.AsIs.NotIdentified[j] {
+		e.Estimate = nan
+		e.Reason = "not identified: it takes part in an exact dependency"
+		e.Sentence = name + " has no coefficient of its own: the data hold an exact dependency that it takes part in."
+		return e
+	}
+	if math.IsNaN(c.S) {
+		e.Reason = "no degrees of freedom are left for the residual variance"
+		e.Sentence = fmt.Sprintf("There are as many coefficients as rows: the data say nothing about the precision of %s.", name)
+		return e
+	}
+	p := len(c.Problem.Names)
+	e.SE = c.S * math.Sqrt(c.AsIs.Inverse[j*p+j])
+	e.SEUntangled = e.SE / math.Sqrt(e.VIF)
+	t := tail.TQuantile(0.95, c.DF)
+	e.Low, e.High = e.Estimate-t*e.SE, e.Estimate+t*e.SE
+	e.LowUntangled, e.HighUntangled = e.Estimate-t*e.SEUntangled, e.Estimate+t*e.SEUntangled
+	now := conclusion(e.Low, e.High, e.SmallestEffect)
+	then := conclusion(e.LowUntangled, e.HighUntangled, e.SmallestEffect)
+	e.ConclusionChanges = now != then
+	e.Sentence = c.sentence(e, name, now, then)
+	return e
+}
+
+// conclusion says where an interval lies against zero and, where one is declared, the smallest effect of interest.
+func conclusion(low, high, smallest float64) string {
+	var where string
+	switch {
+	case low > 0:
+		where = "is positive throughout"
+	case high < 0:
+		where = "is negative throughout"
+	default:
+		where = "includes zero"
+	}
+	if math.IsNaN(smallest) {
+		return where
+	}
+	switch {
+	case low >= smallest || high <= -smallest:
+		return where + " and beyond the smallest effect of interest"
+	case low > -smallest && high < smallest:
+		return where + " and within the smallest effect of interest"
+	}
+	return where + " and leaves open whether the effect is large enough to matter"
+}
+
+func (c *Comparison) sentence(e LedgerEntry, name, now, then string) string {
+	factor := math.Sqrt(e.VIF)
+	s := fmt.Sprintf("The interval of %s, %s to %s, %s. ", name, brief(e.Low), brief(e.High), now)
+	switch {
+	case factor < 1.05:
+		return s + "The other regressors hardly touch its standard error: collinearity plays no part."
+	case e.ConclusionChanges:
+		return s + fmt.Sprintf("The other regressors make its standard error %s times what it would be untangled (%s instead of %s); at the same estimate, the interval of an untangled design, %s to %s, %s.",
+			brief(factor), brief(e.SE), brief(e.SEUntangled), brief(e.LowUntangled), brief(e.HighUntangled), then)
+	}
+	return s + fmt.Sprintf("Its standard error is %s times what it would be untangled (%s instead of %s), but at the same estimate an untangled design would say the same: its interval, %s to %s, %s.",
+		brief(factor), brief(e.SE), brief(e.SEUntangled), brief(e.LowUntangled), brief(e.HighUntangled), again(then))
+}
+
+func again(then string) string {
+	if then == "includes zero" {
+		return "would still include zero"
+	}
+	return then
+}
+
+// brief prints three significant digits without an exponent where the size allows.
+func brief(v float64) string {
+	if math.IsNaN(v) {
+		return "not available"
+	}
+	if math.IsInf(v, 0) {
+		return "infinite"
+	}
+	s := strconv.FormatFloat(v, 'g', 3, 64)
+	if a := math.Abs(v); v == 0 || (a >= 1e-4 && a < 1e7) {
+		f, _ := strconv.ParseFloat(s, 64)
+		s = strconv.FormatFloat(f, 'f', -1, 64)
+	}
+	return s
+}

@@ -1,0 +1,213 @@
+package view
+
+import (
+	"fmt"
+	"math"
+	"strconv"
+	"strings"
+
+	"modelmend/compare"
+	"modelmend/fit/collinear"
+)
+
+// Short prints three significant digits for prose, without an exponent where the size allows.
+func Short(v float64) string {
+	if math.IsNaN(v) || math.IsInf(v, 0) {
+		return "not available"
+	}
+	s := strconv.FormatFloat(v, 'g', 3, 64)
+	if a := math.Abs(v); v == 0 || (a >= 1e-4 && a < 1e7) {
+		f, _ := strconv.ParseFloat(s, 64)
+		s = strconv.FormatFloat(f, 'f', -1, 64)
+	}
+	return s
+}
+
+// verdict answers in plain sentences, the coefficient of interest first.
+func verdict(c *compare.Comparison, r *Results) []string {
+	out := []string{}
+	for _, e := range c.Ledger {
+		if !e.Focal {
+			continue
+		}
+		sentence := e.Sentence
+		if !c.FocalDeclared {
+			sentence = "No coefficient of interest was named; the most entangled is " + c.Problem.Names[e.Column] + ". " + sentence
+		}
+		out = append(out, sentence)
+	}
+	out = append(out, tangleSentence(c))
+	if s := signSentence(c, r); s != "" {
+		out = append(out, s)
+	}
+	if s := predictionSentence(r); s != "" {
+		out = append(out, s)
+	}
+	return out
+}
+
+func tangleSentence(c *compare.Comparison) string {
+	var exact, substantive, structural []string
+	for _, d := range c.Diagnosis.Dependencies {
+		switch d.Kind {
+		case collinear.Exact:
+			exact = append(exact, d.Equation)
+		case collinear.Substantive:
+			substantive = append(substantive, d.Equation)
+		case collinear.Structural:
+			structural = append(structural, c.Problem.Names[d.Left])
+		}
+	}
+	switch {
+	case len(exact) > 0:
+		return "An exact dependency leaves coefficients without a value: " + strings.Join(exact, "; ") + ". Remove one of its members, merge them, or state a restriction."
+	case len(substantive) > 0:
+		s := "Two or more real quantities move together: " + strings.Join(first(substantive, 3), "; ") + "."
+		if len(substantive) > 3 {
+			s = strings.TrimSuffix(s, ".") + fmt.Sprintf("; and %d more.", len(substantive)-3)
+		}
+		return s
+	case c.Diagnosis.Flagged:
+		return "Regressors move together, though no single near-dependency stands out."
+	case len(structural) > 0:
+		return "What is tangled comes from powers, products or dummies alone (" + strings.Join(first(structural, 3), ", ") + "): a matter of where variables count from, and no cause for a remedy."
+	}
+	return "No regressors are tangled beyond the usual marks."
+}
+
+func first(s []string, n int) []string {
+	if len(s) > n {
+		return s[:n]
+	}
+	return s
+}
+
+// signSentence says whether the sign of the first focal coefficient survives every alternative that speaks of the same quantity.
+func signSentence(c *compare.Comparison, r *Results) string {
+	if len(r.Alternatives) < 2 || len(c.Focal) == 0 {
+		return ""
+	}
+	name := c.Problem.Names[c.Focal[0]]
+	base, flips, same := Num(math.NaN()), []string{}, 0
+	low, high := math.Inf(1), math.Inf(-1)
+	for _, a := range r.Alternatives {
+		for _, k := range a.Coefficients {
+			if k.Name != name || k.Estimate.IsNone() || k.Status == "different quantity" || k.Status == "zero" {
+				continue
+			}
+			if a.Key == "as-is" {
+				base = k.Estimate
+			}
+			same++
+			low, high = math.Min(low, float64(k.Estimate)), math.Max(high, float64(k.Estimate))
+			if !base.IsNone() && float64(base)*float64(k.Estimate) < 0 {
+				flips = append(flips, a.Label)
+			}
+		}
+	}
+	switch {
+	case base.IsNone() || same < 2:
+		return ""
+	case len(flips) > 0:
+		return fmt.Sprintf("The sign of %s is not the same under every remedy: it flips under %s.", name, strings.Join(first(flips, 4), ", "))
+	}
+	return fmt.Sprintf("The sign of %s is the same under all %d alternatives that speak of it; the estimate runs from %s to %s.", name, same, Short(low), Short(high))
+}
+
+func predictionSentence(r *Results) string {
+	if len(r.Alternatives) < 2 {
+		return ""
+	}
+	best, better, worse := 0, 0, 0
+	for i, a := range r.Alternatives {
+		if a.OutOfSample.RMSE < r.Alternatives[best].OutOfSample.RMSE*(1-1e-12) {
+			best = i
+		}
+		if a.OutOfSample.Difference.High < 0 {
+			better++
+		}
+		if a.OutOfSample.Difference.Low > 0 {
+			worse++
+		}
+	}
+	b, as := r.Alternatives[best], r.Alternatives[0]
+	if best == 0 {
+		return fmt.Sprintf("No alternative predicts held-out rows better than the model left alone (out-of-sample error %s); %d do clearly worse.", Short(float64(as.OutOfSample.RMSE)), worse)
+	}
+	s := fmt.Sprintf("%s has the smallest out-of-sample error, %s against %s for the model left alone", b.Label, Short(float64(b.OutOfSample.RMSE)), Short(float64(as.OutOfSample.RMSE)))
+	if b.OutOfSample.Difference.High < 0 {
+		return s + "; the difference is beyond its uncertainty."
+	}
+	return s + "; the difference is within its uncertainty."
+}
+
+// buildAdvice gives advice only where the reason is plain: it leaves the model alone when the focal coefficient is not
+// entangled, when its conclusion would be the same untangled, or (to predict) when no gain is beyond its uncertainty.
+func buildAdvice(c *compare.Comparison, r *Results) Advice {
+	a := Advice{Purpose: r.Purpose, Reasons: []string{}, WouldChange: []string{}}
+	if len(r.Alternatives) == 0 {
+		a.Reasons = append(a.Reasons, "nothing was compared: diagnosis only")
+		return a
+	}
+	if c.AsIs.NotIdentified != nil {
+		a.Reasons = append(a.Reasons, "an exact dependency must be resolved first: remove one of its members, merge them, or state a restriction")
+		return a
+	}
+	if c.Study.Purpose == compare.Predict {
+		return predictAdvice(a, r)
+	}
+	changes := false
+	for _, e := range c.Ledger {
+		if !e.Focal {
+			continue
+		}
+		name := c.Problem.Names[e.Column]
+		switch {
+		case e.Reason != "":
+			a.Reasons = append(a.Reasons, name+": "+e.Reason)
+			changes = true
+		case !c.Diagnosis.Tangled[e.Column]:
+			a.Reasons = append(a.Reasons, fmt.Sprintf("%s is not tangled: its inflation factor is %s", name, Short(e.VIF)))
+		case !e.ConclusionChanges:
+			a.Reasons = append(a.Reasons, fmt.Sprintf("%s would lead to the same conclusion untangled, at the same estimate", name))
+		default:
+			changes = true
+			a.Reasons = append(a.Reasons, fmt.Sprintf("%s would lead to another conclusion untangled: a remedy is worth a discussion, and the choice among them depends on what theory says of the other regressors", name))
+		}
+	}
+	if !changes {
+		a.Recommended = "as-is"
+	}
+	a.WouldChange = append(a.WouldChange, "another coefficient of interest, a declared smallest effect, or knowledge from outside the data about the tangled regressors")
+	return a
+}
+
+func predictAdvice(a Advice, r *Results) Advice {
+	best, second := 0, -1
+	for i, alt := range r.Alternatives {
+		if alt.OutOfSample.RMSE < r.Alternatives[best].OutOfSample.RMSE {
+			best = i
+		}
+	}
+	for i, alt := range r.Alternatives {
+		if i != best && (second < 0 || alt.OutOfSample.RMSE < r.Alternatives[second].OutOfSample.RMSE) {
+			second = i
+		}
+	}
+	b := r.Alternatives[best]
+	if best != 0 && b.OutOfSample.Difference.High < 0 {
+		a.Recommended = b.Key
+		if second >= 0 {
+			a.RunnerUp = r.Alternatives[second].Key
+		}
+		a.Reasons = append(a.Reasons, fmt.Sprintf("it has the smallest out-of-sample error, %s, and its gain over the model left alone is beyond its uncertainty", Short(float64(b.OutOfSample.RMSE))))
+	} else {
+		a.Recommended = "as-is"
+		if best != 0 {
+			a.RunnerUp = b.Key
+		}
+		a.Reasons = append(a.Reasons, "no alternative's gain in out-of-sample error is beyond its uncertainty")
+	}
+	a.WouldChange = append(a.WouldChange, "new rows from another time or place than those held out")
+	return a
+}
