@@ -3,7 +3,6 @@ package equation
 import (
 	"fmt"
 	"math"
-	"slices"
 	"strings"
 
 	"modelmend/fit/doubledouble"
@@ -176,15 +175,7 @@ func (k compiler) compare(t *Test) (func(int) Truth, error) {
 	if err != nil {
 		return nil, err
 	}
-	ordered := t.Op != "=" && t.Op != "!="
 	text := left.values == Texts || right.values == Texts
-	if ordered && text {
-		side := t.Left
-		if left.values != Texts {
-			side = t.Right
-		}
-		return nil, k.fail(side.Expr, "text beside "+t.Op, "a number", "compare text with = or != or in")
-	}
 	switch {
 	case left.values == NoValues || right.values == NoValues:
 		return unknown, nil
@@ -202,8 +193,10 @@ func (k compiler) compare(t *Test) (func(int) Truth, error) {
 
 // sides resolves both sides of a comparison; what a quoted text is depends on the other side.
 func (k compiler) sides(t *Test) (left, right operand, err error) {
-	ordered := t.Op != "=" && t.Op != "!="
-	if t.Left.Quoted && !ordered {
+	if t.Op != "=" && t.Op != "!=" {
+		return k.orderedSides(t)
+	}
+	if t.Left.Quoted {
 		if _, known := k.columns(t.Left.Expr.Text); !known && k.isTextColumn(t.Right) {
 			right, err = k.side(t.Right)
 			return literal(t.Left), right, err
@@ -212,12 +205,25 @@ func (k compiler) sides(t *Test) (left, right operand, err error) {
 	if left, err = k.side(t.Left); err != nil {
 		return left, right, err
 	}
-	if t.Right.Quoted && !ordered {
-		right = k.value(left, t.Right)
-		return left, right, nil
+	if t.Right.Quoted {
+		return left, k.value(left, t.Right), nil
 	}
 	right, err = k.side(t.Right)
 	return left, right, err
+}
+
+// orderedSides resolves the sides of < <= > >=, which are numbers.
+func (k compiler) orderedSides(t *Test) (left, right operand, err error) {
+	sides := [2]operand{}
+	for i, s := range []Side{t.Left, t.Right} {
+		if sides[i], err = k.side(s); err != nil {
+			return left, right, err
+		}
+		if sides[i].values == Texts {
+			return left, right, k.fail(s.Expr, "the text column "+shown(s.Expr.Text)+" beside "+t.Op, "a number", "compare text with = or != or in")
+		}
+	}
+	return sides[0], sides[1], nil
 }
 
 func (k compiler) isTextColumn(s Side) bool {
@@ -401,9 +407,13 @@ func sameText(left, right operand) func(int) Truth {
 
 // textIn tells whether a text column holds one of values.
 func textIn(a Accessor, values []string) func(int) Truth {
+	in := map[string]bool{}
+	for _, v := range values {
+		in[v] = true
+	}
 	wanted := make([]Truth, len(a.Levels))
 	for i, level := range a.Levels {
-		wanted[i] = truth(slices.Contains(values, level))
+		wanted[i] = truth(in[level])
 	}
 	return func(row int) Truth {
 		i := a.Codes[row]

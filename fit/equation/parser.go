@@ -123,6 +123,9 @@ func (p *parser) commaInNumber() *SyntaxError {
 func (p *parser) afterOperand(expected string) *SyntaxError {
 	starts := p.tok.kind == nameToken || p.tok.kind == quotedToken || p.tok.kind == numberToken
 	switch {
+	case p.lex.condition && p.tok.kind == nameToken && slices.Contains(conditionWords, p.tok.text),
+		p.tok.kind == signToken && isComparison(p.tok.text):
+		return p.unexpected(expected, "close the parenthesis before "+p.tok.text)
 	case starts && p.last.kind == nameToken && p.tok.kind == nameToken:
 		return p.unexpected(expected, fmt.Sprintf("write an operator between the two, or %q in quotes if that is one column",
 			p.last.text+" "+p.tok.text))
@@ -135,7 +138,7 @@ func (p *parser) afterOperand(expected string) *SyntaxError {
 	case p.isSign(","):
 		return p.unexpected(expected, "join terms with +; a comma only stands inside the parentheses of a function or a list")
 	}
-	return p.unexpected(expected, "")
+	return p.unexpected(expected, "write an operator here or delete this sign")
 }
 
 // enter counts nesting; each call is matched by leave.
@@ -161,14 +164,14 @@ func (p *parser) equation() (*Equation, *SyntaxError) {
 	if err != nil {
 		return nil, err
 	}
+	if !p.isSign("=") && p.tok.kind != endToken {
+		return nil, p.afterOperand(`an operator or "="`)
+	}
 	if err := p.checkDependent(left); err != nil {
 		return nil, err
 	}
-	if !p.isSign("=") {
-		if p.tok.kind == endToken {
-			return nil, p.unexpected(`"="`, shape)
-		}
-		return nil, p.afterOperand(`an operator or "="`)
+	if p.tok.kind == endToken {
+		return nil, p.unexpected(`"="`, shape)
 	}
 	p.take()
 	q := &Equation{Text: p.lex.text, Dependent: left}
@@ -189,6 +192,9 @@ func (p *parser) terms(q *Equation) *SyntaxError {
 		if err != nil {
 			return err
 		}
+		if p.tok.kind != endToken && !p.isSign("+") && !p.isSign("-") && !p.isSign("=") {
+			return p.afterOperand("an operator or the end")
+		}
 		if err := p.checkTerm(term.expr, q.Dependent, taken); err != nil {
 			return err
 		}
@@ -200,10 +206,8 @@ func (p *parser) terms(q *Equation) *SyntaxError {
 			p.take()
 		case p.isSign("-"):
 			return p.unexpected(`"+"`, "join terms with +, a coefficient finds its own sign; one regressor that is a difference stands in parentheses, as in (age-school)")
-		case p.isSign("="):
-			return p.unexpected(`"+" or the end`, "write one = in the equation")
 		default:
-			return p.afterOperand("an operator or the end")
+			return p.unexpected(`"+" or the end`, "write one = in the equation")
 		}
 	}
 }
@@ -224,9 +228,6 @@ func (p *parser) startOfTerm() *SyntaxError {
 }
 
 func (p *parser) checkDependent(e *Expr) *SyntaxError {
-	if err := p.commaInNumber(); err != nil {
-		return err
-	}
 	if len(e.Columns()) == 0 {
 		return p.fail(e.Pos, shown(p.lex.text[e.Pos:e.End]), "a dependent variable with a column in it", "write the dependent variable before the =")
 	}
@@ -234,9 +235,6 @@ func (p *parser) checkDependent(e *Expr) *SyntaxError {
 }
 
 func (p *parser) checkTerm(e, dependent *Expr, taken map[string]string) *SyntaxError {
-	if err := p.commaInNumber(); err != nil {
-		return err
-	}
 	source := shown(p.lex.text[e.Pos:e.End])
 	if len(e.Columns()) == 0 {
 		return p.fail(e.Pos, "the constant "+source, "a term with a column in it",
