@@ -52,7 +52,7 @@ func (r *reading) note() {
 		r.table.Notes = append(r.table.Notes, commaNote(r.builders, r.delimiter))
 	}
 	if r.blanks > 0 {
-		r.table.Notes = append(r.table.Notes, fmt.Sprintf("%d blank lines between rows left out", r.blanks))
+		r.table.Notes = append(r.table.Notes, count(r.blanks, "blank line")+" between rows left out")
 	}
 }
 
