@@ -108,7 +108,7 @@ func (p *Problem) dropVariant(key, name string, removes []int) Variant {
 func describeDrop(f *Final, removes, keep []int) Description {
 	p := f.Problem
 	var d Description
-	if t, ok := restrictionTest(f, "restriction that "+join(p.names(removes))+" has no effect"); ok {
+	if t, ok := restrictionTest(f, "restriction that "+join(p.names(removes))+has(removes)+" no effect"); ok {
 		d.Tests = append(d.Tests, t)
 	}
 	if len(removes) == 1 && f.AsIs.NotIdentified == nil && !math.IsNaN(f.S) && f.S > 0 {
@@ -150,8 +150,15 @@ func describeDrop(f *Final, removes, keep []int) Description {
 				p.Names[j], say(sum), say(f.AsIs.Slopes[j]), say(f.Fitted.Slopes[j]), join(p.names(removes))))
 		}
 	}
-	d.Costs = append(d.Costs, "the standard errors shown are valid only if "+join(p.names(removes))+" was dropped without looking at the results")
+	d.Costs = append(d.Costs, "the standard errors shown are valid only if the choice to drop "+join(p.names(removes))+" was made without looking at the results")
 	return d
+}
+
+func has(cols []int) string {
+	if len(cols) == 1 {
+		return " has"
+	}
+	return " have"
 }
 
 // singleT compares the dropped coefficient's t-ratio with the marks at which dropping pays in mean squared error.

@@ -218,6 +218,16 @@ func involved(raw, centered *linear.Sample, c Cutoffs, constant bool) []int {
 	}
 }
 
+func intersect(a, b []int) []int {
+	var out []int
+	for _, j := range a {
+		if contains(b, j) {
+			out = append(out, j)
+		}
+	}
+	return out
+}
+
 func without(set []int, j int) []int {
 	var out []int
 	for _, i := range set {
@@ -270,13 +280,27 @@ func reasons(in Input, r *Report) []Reason {
 			break
 		}
 	}
-	if len(inv) >= 2 {
-		kind := Substantive
-		if len(involved(in.CenteredRaw, in.Centered, in.Cutoffs, constant)) < 2 {
-			kind = Structural
+	// What is still involved once powers and products are formed about the means is substantive; the rest is a matter of origin.
+	still := inv
+	if in.Centered != in.Sample {
+		still = intersect(inv, involved(in.CenteredRaw, in.Centered, in.Cutoffs, constant))
+	}
+	tie := func(cols []int) string {
+		return fmt.Sprintf("condition index %s ties %s together (each has more than %s of its variance there)", short(largest), list(in.Names, cols, nil), short(in.Cutoffs.VarianceShare))
+	}
+	if len(still) >= 2 {
+		out = append(out, Reason{Substantive, tie(still), still})
+	}
+	if len(inv) >= 2 && len(still) < len(inv) {
+		var rest []int
+		for _, j := range inv {
+			if len(still) < 2 || !contains(still, j) {
+				rest = append(rest, j)
+			}
 		}
-		out = append(out, Reason{kind, fmt.Sprintf("condition index %s ties %s together (each has more than %s of its variance there)",
-			short(largest), list(in.Names, inv, nil), short(in.Cutoffs.VarianceShare)), inv})
+		if len(rest) >= 2 {
+			out = append(out, Reason{Structural, tie(rest) + "; centring undoes it", rest})
+		}
 	}
 	if len(soft) > 0 {
 		out = append(out, Reason{Structural, fmt.Sprintf("inflation factor of %s or more from powers, products or a small base category alone: %s",
