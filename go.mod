@@ -10,4 +10,8 @@ require (
 	gonum.org/v1/gonum v0.17.0
 )
 
-require golang.org/x/text v0.23.0 // indirect
+require (
+	github.com/inconshreveable/mousetrap v1.1.0 // indirect
+	github.com/spf13/pflag v1.0.9 // indirect
+	golang.org/x/text v0.23.0 // indirect
+)

@@ -42,7 +42,8 @@ func Build(c *compare.Comparison, study, toolVersion string) *Results {
 	r.Cards = buildCards(r)
 	r.Cautions = Cautions(len(r.Alternatives))
 	r.Advice = buildAdvice(c, r)
-	r.Verdict = verdict(c, r)
+	r.Answers = answers(c, r)
+	r.Verdict = verdict(r.Answers)
 	return r
 }
 

@@ -24,6 +24,7 @@ type Results struct {
 	Purpose       string          `json:"purpose"`       // explain | predict | describe
 	Invented      bool            `json:"invented"`      // true for the built-in studies
 	Verdict       []string        `json:"verdict"`       // plain sentences, most important first
+	Answers       Answers         `json:"answers"`       // the verdict by question
 	Cautions      []Note          `json:"cautions"`
 	Diagnosis     Diagnosis       `json:"diagnosis"`
 	Alternatives  []Alternative   `json:"alternatives"`
@@ -31,6 +32,15 @@ type Results struct {
 	Advice        Advice          `json:"advice"`
 	Notes         []Note          `json:"notes"`
 	Cards         []Card          `json:"cards"` // one a remedy that is listed or not applicable, in order
+}
+
+// Answers holds one sentence a question; a sentence is empty where the question does not arise.
+type Answers struct {
+	Problem    []string `json:"problem"` // one a focal coefficient
+	Tangles    string   `json:"tangles"`
+	Sign       string   `json:"sign"`
+	Prediction string   `json:"prediction"`
+	Tuning     string   `json:"tuning"`
 }
 
 // Note is a remark that does not stop the analysis.

@@ -23,9 +23,9 @@ func Short(v float64) string {
 	return s
 }
 
-// verdict answers in plain sentences, the coefficient of interest first.
-func verdict(c *compare.Comparison, r *Results) []string {
-	out := []string{}
+// answers says in plain sentences what there is to say, the coefficient of interest first.
+func answers(c *compare.Comparison, r *Results) Answers {
+	a := Answers{Problem: []string{}}
 	for _, e := range c.Ledger {
 		if !e.Focal {
 			continue
@@ -34,16 +34,47 @@ func verdict(c *compare.Comparison, r *Results) []string {
 		if !c.FocalDeclared {
 			sentence = "No coefficient of interest was named; the most entangled is " + c.Problem.Names[e.Column] + ". " + sentence
 		}
-		out = append(out, sentence)
+		a.Problem = append(a.Problem, sentence)
 	}
-	out = append(out, tangleSentence(c))
-	if s := signSentence(c, r); s != "" {
-		out = append(out, s)
-	}
-	if s := predictionSentence(r); s != "" {
-		out = append(out, s)
+	a.Tangles = tangleSentence(c)
+	a.Sign = signSentence(c, r)
+	a.Prediction = predictionSentence(r)
+	a.Tuning = tuningSentence(r)
+	return a
+}
+
+// verdict lists the answers for the terminal, most important first.
+func verdict(a Answers) []string {
+	out := append([]string{}, a.Problem...)
+	for _, s := range []string{a.Tangles, a.Sign, a.Prediction} {
+		if s != "" {
+			out = append(out, s)
+		}
 	}
 	return out
+}
+
+// tuningSentence says what was chosen and how much the choice matters.
+func tuningSentence(r *Results) string {
+	var parts []string
+	for _, a := range r.Alternatives {
+		if a.Tuning == nil {
+			continue
+		}
+		how := "cross-validation chose"
+		if a.Tuning.Rule != "cross-validation" {
+			how = "the user fixed"
+		}
+		if a.Tuning.Parameter == "penalty" {
+			parts = append(parts, fmt.Sprintf("%s: %s the penalty %s, which leaves %s degrees of freedom", a.Label, how, Short(float64(a.Tuning.Penalty)), Short(float64(a.Tuning.EffectiveDegrees))))
+		} else {
+			parts = append(parts, fmt.Sprintf("%s: %s %s of %d components", a.Label, how, Short(float64(a.Tuning.Components)), len(a.Tuning.Path)-1))
+		}
+	}
+	if len(parts) == 0 {
+		return ""
+	}
+	return strings.Join(parts, ". ") + "."
 }
 
 func tangleSentence(c *compare.Comparison) string {

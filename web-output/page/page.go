@@ -1,0 +1,130 @@
+// Package page renders one self-contained HTML file: a memo that is complete without script and better with it.
+//
+// A view.Results goes in; HTML comes out, all or nothing. Script, style and data are inlined under a strict content policy; nothing is
+// fetched. Names from the data are text wherever they stand. Before it stands chart, after it cmd.
+package page
+
+import (
+	"bytes"
+	"crypto/sha256"
+	"embed"
+	"encoding/base64"
+	"encoding/json"
+	"fmt"
+	"html/template"
+	"io"
+	"strings"
+	"sync"
+
+	"modelmend/web-output/chart"
+	"modelmend/web-output/view"
+)
+
+//go:embed page.tmpl assets/css/*.css assets/js/*.js assets/third-party/echarts/echarts.js
+var files embed.FS
+
+// styles and modules are joined in this order.
+var (
+	styles  = []string{"base", "table", "figure", "print"}
+	modules = []string{"format", "state", "interval", "charts", "ladder", "matrix", "tuning", "copy", "main"}
+)
+
+// assets are the parts that are the same for every page.
+type assets struct {
+	style, library, script string
+	policy                 string
+	template               *template.Template
+}
+
+var loadAssets = sync.OnceValues(func() (*assets, error) {
+	a := &assets{}
+	var err error
+	if a.style, err = join("assets/css/", styles, ".css", func(s string) string { return s }); err != nil {
+		return nil, err
+	}
+	body, err := join("assets/js/", modules, ".js", withoutModuleWords)
+	if err != nil {
+		return nil, err
+	}
+	a.script = "(() => {\n\"use strict\";\n" + body + "})();\n"
+	lib, err := files.ReadFile("assets/third-party/echarts/echarts.js")
+	if err != nil {
+		return nil, err
+	}
+	// A label that reads __proto__ must not reach Object.prototype through a cache keyed by text.
+	a.library = "delete Object.prototype.__proto__;\n" + string(lib)
+	a.policy = fmt.Sprintf("default-src 'none'; script-src '%s' '%s'; style-src-elem '%s'; style-src-attr 'unsafe-inline'; img-src data: blob:; base-uri 'none'; form-action 'none'",
+		hash(a.library), hash(a.script), hash(a.style))
+	a.template, err = template.New("page.tmpl").Funcs(functions).ParseFS(files, "page.tmpl")
+	return a, err
+})
+
+func join(folder string, names []string, ending string, edit func(string) string) (string, error) {
+	var b strings.Builder
+	for _, n := range names {
+		raw, err := files.ReadFile(folder + n + ending)
+		if err != nil {
+			return "", err
+		}
+		b.WriteString(edit(string(raw)))
+		b.WriteByte('\n')
+	}
+	return b.String(), nil
+}
+
+// withoutModuleWords turns a module into plain script: import lines go, the word export goes.
+func withoutModuleWords(s string) string {
+	var b strings.Builder
+	for _, line := range strings.SplitAfter(s, "\n") {
+		if strings.HasPrefix(line, "import ") {
+			continue
+		}
+		b.WriteString(strings.TrimPrefix(line, "export "))
+	}
+	return b.String()
+}
+
+func hash(s string) string {
+	sum := sha256.Sum256([]byte(s))
+	return "sha256-" + base64.StdEncoding.EncodeToString(sum[:])
+}
+
+// Script returns the joined script of the page, for checks.
+func Script() (string, error) {
+	a, err := loadAssets()
+	if err != nil {
+		return "", err
+	}
+	return a.script, nil
+}
+
+// Write renders the page to w, all or nothing. It returns an error when a number cannot be written or w fails.
+func Write(w io.Writer, r *view.Results) error {
+	a, err := loadAssets()
+	if err != nil {
+		return err
+	}
+	charts, err := chart.Build(r)
+	if err != nil {
+		return err
+	}
+	choices := choicesOf(r)
+	slim := *r
+	slim.Run.Folds.Assignment = [][]int{} // the page has no use for it; results.json holds it
+	data, err := json.Marshal(struct {
+		Results *view.Results `json:"results"`
+		Charts  chart.Options `json:"charts"`
+		Choices []choice      `json:"choices"`
+	}{&slim, charts, choices})
+	if err != nil {
+		return fmt.Errorf("the page's data cannot be written: %w", err)
+	}
+	p := &content{Results: r, Choices: choices, Data: template.JS(data), Style: template.CSS(a.style), Library: template.JS(a.library), Script: template.JS(a.script), Policy: a.policy}
+	p.fill()
+	var b bytes.Buffer
+	if err := a.template.Execute(&b, p); err != nil {
+		return fmt.Errorf("the page cannot be rendered: %w", err)
+	}
+	_, err = w.Write(b.Bytes())
+	return err
+}
