@@ -141,7 +141,7 @@ func say(v float64) string {
 		return "not available"
 	}
 	s := strconv.FormatFloat(v, 'g', 4, 64)
-	if a := math.Abs(v); v == 0 || (a >= 1e-4 && a < 1e7) {
+	if a := math.Abs(v); v == 0 || (a >= 1e-6 && a < 1e9) {
 		f, _ := strconv.ParseFloat(s, 64)
 		s = strconv.FormatFloat(f, 'f', -1, 64)
 	}

@@ -124,16 +124,13 @@ func describeDrop(f *Final, removes, keep []int) Description {
 		text := ""
 		for i, c := range removes {
 			if g := moves[i][k]; math.Abs(g)*p.Sample.SD(j) > 1e-3*p.Sample.SD(c) {
-				if text != "" {
-					text += ", and "
-				}
-				text += fmt.Sprintf("%s times the coefficient of %s", say(g), p.Names[c])
+				text += fmt.Sprintf("%s%s times the coefficient of %s", sign(g), say(math.Abs(g)), p.Names[c])
 			}
 		}
 		if text == "" {
 			text = "the association while the other kept regressors stay the same; it hardly moves with what was dropped"
 		} else {
-			text = "its own association plus " + text
+			text = "its own association" + text
 		}
 		d.Meaning = append(d.Meaning, Meaning{p.Names[j], text})
 	}
@@ -152,6 +149,13 @@ func describeDrop(f *Final, removes, keep []int) Description {
 	}
 	d.Costs = append(d.Costs, "the standard errors shown are valid only if the choice to drop "+join(p.names(removes))+" was made without looking at the results")
 	return d
+}
+
+func sign(v float64) string {
+	if v < 0 {
+		return " minus "
+	}
+	return " plus "
 }
 
 func has(cols []int) string {

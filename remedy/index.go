@@ -105,7 +105,7 @@ func (p *Problem) indexVariant(key string, g Group, m indexMaker) Variant {
 		return a
 	}
 	return Variant{
-		Key: key, Label: fmt.Sprintf("Index %s, %s", g.Name, m.label), OwnVariance: true,
+		Key: key, Label: fmt.Sprintf("Index %s, %s", strings.ReplaceAll(g.Name, "+", " + "), m.label), OwnVariance: true,
 		Summary: fmt.Sprintf("%s merged into one: %s.", join(p.names(g.Columns)), m.text),
 		Learn: func(t Training) *Fitted {
 			a := basis(t.Sample)
@@ -122,7 +122,7 @@ func (p *Problem) indexVariant(key string, g Group, m indexMaker) Variant {
 
 func describeIndex(f *Final, g Group, m indexMaker) Description {
 	p := f.Problem
-	var d Description
+	d := Description{Meaning: []Meaning{{"", "the association while the index and the other regressors stay the same"}}}
 	var rule []string
 	square := 0.0
 	for _, c := range g.Columns {

@@ -343,6 +343,7 @@ var functions = template.FuncMap{
 	},
 	"none":     func(v view.Num) bool { return v.IsNone() },
 	"sentence": func(s string) string { return strings.ToUpper(s[:min(1, len(s))]) + s[min(1, len(s)):] },
+	"plain":    func(v view.Num) string { return strconv.FormatFloat(float64(v), 'f', -1, 64) },
 	"rootnum":  func(v view.Num) string { return Figure(math.Sqrt(float64(v)), 3) },
 	"share": func(v view.Num) string {
 		if v.IsNone() {

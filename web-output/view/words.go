@@ -16,11 +16,21 @@ func Short(v float64) string {
 		return "not available"
 	}
 	s := strconv.FormatFloat(v, 'g', 3, 64)
-	if a := math.Abs(v); v == 0 || (a >= 1e-4 && a < 1e7) {
+	if a := math.Abs(v); v == 0 || (a >= 1e-6 && a < 1e9) {
 		f, _ := strconv.ParseFloat(s, 64)
 		s = strconv.FormatFloat(f, 'f', -1, 64)
 	}
 	return s
+}
+
+// four prints four significant digits, trailing zeros kept, as errors that lie close together need.
+func four(v Num) string {
+	f := float64(v)
+	if a := math.Abs(f); f == 0 || math.IsNaN(f) || math.IsInf(f, 0) || a < 1e-6 || a >= 1e9 {
+		return strconv.FormatFloat(f, 'g', 4, 64)
+	}
+	e := int(math.Floor(math.Log10(math.Abs(f))))
+	return strconv.FormatFloat(f, 'f', max(0, 3-e), 64)
 }
 
 // answers says in plain sentences what there is to say, the coefficient of interest first.
@@ -66,7 +76,7 @@ func tuningSentence(r *Results) string {
 			how = "the user fixed"
 		}
 		if a.Tuning.Parameter == "penalty" {
-			parts = append(parts, fmt.Sprintf("%s: %s the penalty %s, which leaves %s degrees of freedom", a.Label, how, Short(float64(a.Tuning.Penalty)), Short(float64(a.Tuning.EffectiveDegrees))))
+			parts = append(parts, fmt.Sprintf("%s: %s the penalty %s, which leaves %s effective degrees of freedom", a.Label, how, Short(float64(a.Tuning.Penalty)), Short(float64(a.Tuning.EffectiveDegrees))))
 		} else {
 			parts = append(parts, fmt.Sprintf("%s: %s %s of %d components", a.Label, how, Short(float64(a.Tuning.Components)), len(a.Tuning.Path)-1))
 		}
@@ -163,9 +173,9 @@ func predictionSentence(r *Results) string {
 	}
 	b, as := r.Alternatives[best], r.Alternatives[0]
 	if best == 0 {
-		return fmt.Sprintf("No alternative predicts held-out rows better than the model left alone (out-of-sample error %s); %d do clearly worse.", Short(float64(as.OutOfSample.RMSE)), worse)
+		return fmt.Sprintf("No alternative predicts held-out rows better than the model left alone (out-of-sample error %s); %d do clearly worse.", four(as.OutOfSample.RMSE), worse)
 	}
-	s := fmt.Sprintf("%s has the smallest out-of-sample error, %s against %s for the model left alone", b.Label, Short(float64(b.OutOfSample.RMSE)), Short(float64(as.OutOfSample.RMSE)))
+	s := fmt.Sprintf("%s has the smallest out-of-sample error, %s against %s for the model left alone", b.Label, four(b.OutOfSample.RMSE), four(as.OutOfSample.RMSE))
 	if b.OutOfSample.Difference.High < 0 {
 		return s + "; the difference is beyond its uncertainty."
 	}
@@ -195,15 +205,15 @@ func buildAdvice(c *compare.Comparison, r *Results) Advice {
 		name := c.Problem.Names[e.Column]
 		switch {
 		case e.Reason != "":
-			a.Reasons = append(a.Reasons, name+": "+e.Reason)
+			a.Reasons = append(a.Reasons, "the coefficient of "+name+": "+e.Reason)
 			changes = true
 		case !c.Diagnosis.Tangled[e.Column]:
-			a.Reasons = append(a.Reasons, fmt.Sprintf("%s is not tangled: its inflation factor is %s", name, Short(e.VIF)))
+			a.Reasons = append(a.Reasons, fmt.Sprintf("the coefficient of %s is not tangled: its inflation factor is %s", name, Short(e.VIF)))
 		case !e.ConclusionChanges:
-			a.Reasons = append(a.Reasons, fmt.Sprintf("%s would lead to the same conclusion untangled, at the same estimate", name))
+			a.Reasons = append(a.Reasons, fmt.Sprintf("the conclusion on %s would be the same if it were untangled, at the same estimate", name))
 		default:
 			changes = true
-			a.Reasons = append(a.Reasons, fmt.Sprintf("%s would lead to another conclusion untangled: a remedy is worth a discussion, and the choice among them depends on what theory says of the other regressors", name))
+			a.Reasons = append(a.Reasons, fmt.Sprintf("the conclusion on %s would be another if it were untangled, at the same estimate: a remedy is worth a discussion, and the choice depends on what theory says of the regressors tangled with it", name))
 		}
 	}
 	if !changes {

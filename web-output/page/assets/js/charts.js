@@ -1,8 +1,11 @@
 // Charts: options come from Go; this module attaches names, theme and the marks that follow the sliders. Reads the page's charts and
 // view.Results. Every label is text: formatters return plain strings for axes and elements for tool tips.
-import { figure } from "./format.js";
+import { figure, minus } from "./format.js";
 
-function theme() {
+// paperTheme is what is printed, whatever the screen shows.
+const paperTheme = { ink: "#111111", soft: "#444444", line: "#cccccc", paper: "#ffffff", accent: "#134c57", band: "rgba(19, 76, 87, 0.14)", faint: "#777777" };
+
+function screenTheme() {
   const css = getComputedStyle(document.documentElement);
   const v = (name) => css.getPropertyValue(name).trim();
   return { ink: v("--ink"), soft: v("--soft"), line: v("--line"), paper: v("--paper"), accent: v("--accent"), band: v("--band"), faint: v("--faint") };
@@ -19,9 +22,11 @@ export function mountCharts(page) {
   const boxes = [...document.querySelectorAll(".chart[data-chart]")].filter((b) => page.charts_[b.dataset.chart] !== undefined);
   for (const b of document.querySelectorAll(".chart[data-chart]")) if (!boxes.includes(b)) b.closest("figure").hidden = true;
   let live = [];
+  let theme = screenTheme;
   const cursors = [];
 
   function draw(printing) {
+    theme = printing ? () => paperTheme : screenTheme;
     for (const { chart } of live) chart.dispose();
     live = boxes.map((box) => {
       const rows = Number(box.dataset.rows || 0);
@@ -37,7 +42,9 @@ export function mountCharts(page) {
     for (const { chart, box } of live) {
       if (Number(box.dataset.alternative) !== a || box.dataset.alternative === undefined) continue;
       const c = theme();
-      chart.setOption({ series: [{ id: "cursor", markLine: { data: value > 0 || box.dataset.zero ? [{ xAxis: value }] : [], lineStyle: { color: c.accent } } }] });
+      const id = box.dataset.chart.endsWith("-path") ? "slope-0" : "error";
+      const penalty = page.results.alternatives[a].tuning.parameter === "penalty";
+      chart.setOption({ series: [{ id, markLine: cursorLine(c, value > 0 || !penalty ? [{ xAxis: value }] : []) }] });
     }
   }
 
@@ -84,7 +91,7 @@ function optionFor(page, box, c, animated) {
   option.textStyle = { color: c.ink, fontFamily: getComputedStyle(document.body).getPropertyValue("--sans") };
   option.legend = { show: false };
   option.aria = { enabled: true, label: { description: box.closest("figure").querySelector("figcaption").textContent } };
-  option.grid = { left: 8, right: 16, top: 30, bottom: 38, outerBoundsMode: "same" };
+  option.grid = { left: 4, right: 18, top: 26, bottom: 6, outerBoundsMode: "same", outerBoundsContain: "all" };
   for (const axis of [...option.xAxis, ...option.yAxis]) styleAxis(axis, c);
   const name = box.dataset.chart;
   if (name === "shares" || name === "correlations") heat(page, box, option, name, c);
@@ -141,10 +148,11 @@ function heat(page, box, option, name, c) {
   const series = option.series[0];
   series.itemStyle = { borderColor: c.line, borderWidth: 1 };
   const many = columns.length > (narrow ? 6 : 13);
-  series.label = { show: !many, fontSize: 10.5, color: c.ink, textBorderColor: c.paper, textBorderWidth: 2, formatter: (p) => {
+  series.label = { show: !many, fontSize: 10.5, textBorderWidth: 0, formatter: (p) => {
     const v = p.value[2];
-    return Math.abs(v) < 0.05 ? "" : figure(Math.round(v * 100) / 100, Math.abs(v) >= 0.995 ? 3 : 2);
+    return Math.abs(v) < 0.05 ? "" : minus(v.toFixed(2));
   } };
+  series.data = series.data.map((d) => ({ value: d.value, label: { color: Math.abs(d.value[2]) > 0.55 ? c.paper : c.ink } }));
   series.emphasis = { itemStyle: { borderColor: c.accent, borderWidth: 2 } };
   option.tooltip = tooltip(c, (p) => tip([rows[p.value[1]], (name === "shares" ? "condition index " : "") + columns[p.value[0]], figure(p.value[2], 3)]));
 }
@@ -163,8 +171,8 @@ function folds(page, option, c) {
   option.tooltip = tooltip(c, (p) => tip([labels[p.value[1]], figure(p.value[0], 3)]));
 }
 
-function cursorSeries(c) {
-  return { type: "line", id: "cursor", data: [], silent: true, markLine: { silent: true, symbol: "none", animation: false, label: { show: false }, lineStyle: { color: c.accent, width: 2, type: "solid" }, data: [] } };
+function cursorLine(c, data) {
+  return { silent: true, symbol: "none", animation: false, label: { show: false }, lineStyle: { color: c.accent, width: 2, type: "solid" }, data };
 }
 
 function pathStyles(page, c) {
@@ -184,7 +192,6 @@ function path(page, box, option, c) {
     s.triggerLineEvent = true;
     s.emphasis = { focus: "series" };
   });
-  option.series.push(cursorSeries(c));
   const names = page.results.diagnosis.regressors.map((g) => g.name);
   option.tooltip = tooltip(c, (p) => tip([names[p.seriesIndex] || "", p.value ? `${figure(p.value[0], 3)}: ${figure(p.value[1], 3)}` : ""]));
 }
@@ -199,7 +206,6 @@ function error(page, box, option, c) {
   s.markArea = { silent: true, itemStyle: { color: c.band }, data: [[{ xAxis: from > 0 || t.parameter !== "penalty" ? from : t.path[1].value }, { xAxis: to }]] };
   const ticks = t.candidates.map((k) => k.value).filter((v) => v > 0 || t.parameter !== "penalty");
   option.series.push({ type: "scatter", id: "candidates", symbol: "triangle", symbolSize: 8, itemStyle: { color: c.soft }, silent: true, data: ticks.map((v) => [v, nearest(t, v)]) });
-  option.series.push(cursorSeries(c));
   option.tooltip = tooltip(c, (p) => tip([figure(p.value[0], 3), "mean squared error " + figure(p.value[1], 4)]));
 }
 

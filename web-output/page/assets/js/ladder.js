@@ -77,7 +77,7 @@ export function mountLadder(page) {
     const band = rows[0];
     const axis = newAxis(rows.flatMap((r, i) => (r && !bodies[i].hidden ? [r.estimate, r.low, r.high] : [])));
     drawTicks(ticks, axis);
-    document.getElementById("shown").textContent = choice.name;
+    for (const n of document.querySelectorAll("[data-shown]")) n.textContent = choice.name;
     bodies.forEach((body, i) => fill(page, body, rows[i], band, axis, choice));
     for (const i of order(rows, page.state.sort, page.state.down)) table.append(bodies[i]);
     for (const th of table.querySelectorAll("th[data-sort]")) {

@@ -16,7 +16,7 @@ export function mountMatrix(page) {
         by = null;
         for (const g of results.diagnosis.regressors) if (g.name === c.name) by = g.sd;
       }
-      cell.textContent = figure(scaled(c.estimate, by), 4);
+      cell.textContent = figure(scaled(c.estimate, by), 3);
       const lines = [figure(scaled(c.standardError, by), 3)];
       if (c.status === "different quantity") lines.push("different quantity");
       for (const text of lines) {
