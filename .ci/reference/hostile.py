@@ -1,4 +1,7 @@
-"""Writes testdata/hostile/*.csv: invented numbers under hostile column names. Run: python3 .ci/reference/hostile.py"""
+"""Writes testdata/hostile/*.csv: invented numbers under hostile column names. 
+
+Run from the project's folder with any Python 3: python3 .ci/reference/hostile.py. The seeds are fixed: it writes the same bytes again.
+"""
 import csv, io, os, random
 
 HERE = os.path.join(os.path.dirname(__file__), "..", "..", "testdata", "hostile")
@@ -8,7 +11,25 @@ NAMES = [
 ]
 
 
+PADDED = ["y", " lead", "trail ", "  both  "]
+
+
+def padded():
+    """Names with blanks around them; the second and third column are tangled."""
+    rng = random.Random(6)
+    out = io.StringIO()
+    w = csv.writer(out, lineterminator="\n")
+    w.writerow(PADDED)
+    for _ in range(60):
+        base = rng.gauss(0, 1)
+        x = [base + 0.1 * rng.gauss(0, 1), base + 0.1 * rng.gauss(0, 1), rng.gauss(0, 1)]
+        w.writerow([f"{v:.4f}" for v in [x[0] + 0.5 * x[2] + rng.gauss(0, 1)] + x])
+    with open(os.path.join(HERE, "padded.csv"), "w", encoding="utf-8", newline="") as f:
+        f.write(out.getvalue())
+
+
 def main():
+    padded()
     rng = random.Random(5)
     out = io.StringIO()
     w = csv.writer(out, lineterminator="\n")

@@ -18,6 +18,19 @@ from sklearn.linear_model import LinearRegression, Ridge
 
 HERE = os.path.join(os.path.dirname(__file__), "..", "..", "testdata")
 np = numpy
+PENALTIES = (0.001, 0.01, 0.04, 0.1, 1)
+METHOD = {
+    "leastSquares": "singular values of centred, unit-length columns (numpy.linalg.lstsq, rcond 1e-13: the shortest solution in standardised "
+    "units where training rows are exactly dependent); coefficients in raw units, constant first; standard errors and inflation factors "
+    "(diagonal of the inverse correlation matrix) of the slopes from the same singular values",
+    "ridge": "sklearn.linear_model.Ridge(alpha=penalty) on centred, unit-length columns, constant not penalised, raw units",
+    "components": "sklearn.decomposition.PCA on centred, unit-length columns, then sklearn.linear_model.LinearRegression, raw units",
+    "folds": "mean squared error of the held-out rows, repeat by repeat and fold by fold; scaling learned in each training set",
+    "nested": "chosen: place in grid (ridge; ties to the larger penalty) or number of components (ties to the fewer), by squared errors "
+    "pooled over the other outer folds, each predicted from all rows outside it and outside the outer fold",
+    "difference": "mean, lower and upper end of the mean squared errors minus those of as-is: S^2 (1/J + n_test/n_train), t with J-1 df; "
+    "for all components it is rounding, since they are least squares",
+}
 
 
 def read(name):
@@ -38,16 +51,16 @@ def raw(mean, length, ymean, standardised):
 
 
 def least_squares(x, y):
-    fit = LinearRegression().fit(x, y)
-    return np.concatenate([[fit.intercept_], fit.coef_])
+    """Least squares by singular values of the centred, unit-length columns; where they are exactly dependent (smallest singular value
+    under 1e-13 of the largest), the shortest solution in standardised units."""
+    mean, length = unit(x)
+    slopes, *_ = np.linalg.lstsq((x - mean) / length, y - y.mean(), rcond=1e-13)
+    return raw(mean, length, y.mean(), slopes)
 
 
 def ridge(x, y, k):
     if k == 0:
-        mean, length = unit(x)
-        z = (x - mean) / length
-        s, *_ = np.linalg.lstsq(z, y - y.mean(), rcond=None)
-        return raw(mean, length, y.mean(), s)
+        return least_squares(x, y)
     mean, length = unit(x)
     fit = Ridge(alpha=k, fit_intercept=False, solver="svd").fit((x - mean) / length, y - y.mean())
     return raw(mean, length, y.mean(), fit.coef_)
@@ -73,6 +86,41 @@ def drop(x, y, j):
 
 def sse(b, x, y):
     return float(((y - b[0] - x @ b[1:]) ** 2).sum())
+
+
+def same(want, got, tolerance, *place):
+    gap = np.max(np.abs(np.asarray(got) - want) / np.abs(want))  # the worst single value
+    assert gap < tolerance, (place, gap)
+
+
+def published(name, out):
+    """Stops where a value differs from those beside the data: certified by NIST (Longley), or recomputed from the same rows in 50-digit
+    arithmetic (values.json). The held-out errors of Longley are known to two decimals."""
+    place = {"longley": ("longley", "full"), "hald": ("hald", None), "imports": ("french-imports", "sample_1949_1959")}.get(name)
+    if place is None:
+        return
+    with open(os.path.join(HERE, place[0], "values.json")) as f:
+        exact = json.load(f)["recomputed"]
+    exact = exact[place[1]] if place[1] else exact
+    number = lambda texts: np.array([float(v) for v in texts])
+    same(number(exact["coef"]), out["leastSquares"]["coefficients"], 1e-9, name, "coefficients")
+    same(number(exact["se"])[1:], out["leastSquares"]["standardErrors"], 1e-9, name, "standard errors")
+    same(number(exact["vif"]), out["leastSquares"]["vif"], 1e-9, name, "inflation factors")
+    penalties = [float(r["k"]) for r in exact["ridge"]]
+    for r in out["ridge"]:
+        if r["penalty"] in penalties:
+            same(number(exact["ridge"][penalties.index(r["penalty"])]["coef"]), r["coefficients"], 1e-9, name, "ridge", r["penalty"])
+    for m, known in exact["pcr"].items():
+        same(number(known["coef"]), out["components"][int(m)], 1e-9, name, "components", m)
+    if name == "longley":
+        with open(os.path.join(HERE, "nist", "longley", "values.json")) as f:
+            certified = json.load(f)["certified"]
+        for j, value in enumerate(number(certified["coef"])):
+            same(value, out["leastSquares"]["coefficients"][j], 1e-9, name, "certified", j)
+        for penalty, rmse in ((0.001, 428.72), (0.01, 501.27), (0.04, 525.26), (0.1, 598.60)):
+            found = [r["rmse"] for r in out["fixed"]["ridge"] if r["penalty"] == penalty]
+            assert abs(found[0] - rmse) < 0.0051, (penalty, found)
+        assert abs(out["asIs"]["rmse"] - 424.771449) < 1e-6, out["asIs"]
 
 
 def folds_errors(x, y, assignment, fit):
@@ -142,24 +190,27 @@ def case(name, data, equation, rows, names, x, y, assignment):
     s2 = sse(b, x, y) / (n - p - 1)
     inverse = (vt.T / sigma ** 2) @ vt
     g = grid(x)
-    for k in (0.001, 0.1):  # the library's ridge equals the closed form
-        closed = raw(mean, length, y.mean(), np.linalg.solve(z.T @ z + k * np.eye(p), z.T @ (y - y.mean())))
-        assert np.allclose(closed, ridge(x, y, k), rtol=1e-6, atol=1e-9 * np.abs(closed).max()), (name, k)
-    # Where one held-out row is all that breaks an identity, the training rows are exactly dependent: the shortest solution in standardised
-    # units is meant, which is ridge at penalty 0.
-    base = folds_errors(x, y, assignment, lambda a, c: ridge(a, c, 0))
+    for k in PENALTIES:  # the library's ridge equals the closed form, in standardised units
+        closed = np.linalg.solve(z.T @ z + k * np.eye(p), z.T @ (y - y.mean()))
+        same(closed, ridge(x, y, k)[1:] * length, 1e-9, name, "ridge", k)
+    plain = LinearRegression().fit(z, y)  # least squares equals the library's, and ridge without a penalty and all components are both it
+    for fit in (b, ridge(x, y, 0), components(x, y, p)):
+        same(plain.coef_, fit[1:] * length, 1e-9, name, "least squares")
+    # Where one held-out row is all that breaks an identity, the training rows are exactly dependent: see least_squares.
+    base = folds_errors(x, y, assignment, least_squares)
     out = {
         "library": f"numpy {numpy.__version__}, scipy {scipy.__version__}, scikit-learn {sklearn.__version__}",
         "command": "/usr/bin/python3 .ci/reference/reference.py",
         "data": data, "equation": equation, "rows": rows, "regressors": names,
         "assignment": [[int(v) for v in folds] for folds in assignment],
         "grid": g,
+        "method": METHOD,
         "leastSquares": {"coefficients": list(b), "standardErrors": list(np.sqrt(s2 * np.diag(inverse)) / length), "vif": list(np.diag(inverse))},
-        "ridge": [{"penalty": k, "coefficients": list(ridge(x, y, k)), "degrees": float((sigma ** 2 / (sigma ** 2 + k)).sum())} for k in (0.001, 0.01, 0.04, 0.1, 1)],
+        "ridge": [{"penalty": k, "coefficients": list(ridge(x, y, k)), "degrees": float((sigma ** 2 / (sigma ** 2 + k)).sum())} for k in PENALTIES],
         "components": [list(components(x, y, m)) for m in range(p + 1)],
         "folds": {
             "as-is": base,
-            "ridge": [{"penalty": k, "mse": folds_errors(x, y, assignment, lambda a, c: ridge(a, c, k))} for k in (0.001, 0.04, 1)],
+            "ridge": [{"penalty": k, "mse": folds_errors(x, y, assignment, lambda a, c: ridge(a, c, k))} for k in (0.001, 0.04, 1, 0.01, 0.1)],
             "components": [folds_errors(x, y, assignment, lambda a, c: components(a, c, m)) for m in range(p + 1)],
             "drop": [folds_errors(x, y, assignment, lambda a, c: drop(a, c, j)) for j in range(p)],
         },
@@ -168,6 +219,12 @@ def case(name, data, equation, rows, names, x, y, assignment):
         chosen, errors = nested(x, y, assignment, count, fit, later)
         out.setdefault("nested", {})[key] = {"chosen": chosen, "mse": errors, **summary(x, y, assignment, errors, base)}
     out["asIs"] = summary(x, y, assignment, base, base)
+    out["fixed"] = {  # nothing chosen: pooled error and difference of each fixed alternative, in the order of "folds"
+        "ridge": [{"penalty": r["penalty"], **summary(x, y, assignment, r["mse"], base)} for r in out["folds"]["ridge"]],
+        "components": [summary(x, y, assignment, e, base) for e in out["folds"]["components"]],
+        "drop": [summary(x, y, assignment, e, base) for e in out["folds"]["drop"]],
+    }
+    published(name, out)
     path = os.path.join(HERE, "reference-library", name + ".json")
     with open(path, "w") as f:
         json.dump(out, f, indent=0)
