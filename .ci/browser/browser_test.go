@@ -166,6 +166,12 @@ func (b *tab) quiet() {
 	}
 }
 
+// wide names what stands out sideways.
+func wide(b *tab) string {
+	b.Helper()
+	return eval[string](b, `[...document.querySelectorAll("body *")].filter(e => e.getBoundingClientRect().right > 361 && !e.closest(".scroll") && !e.closest(".visually-hidden")).slice(0, 8).map(e => e.tagName + "." + (e.getAttribute("class") || e.id)).join(" ")`)
+}
+
 // picture saves what is seen, the whole page, under .ci/pictures.
 func (b *tab) picture(name string) {
 	b.Helper()
@@ -237,7 +243,7 @@ func TestPagesLoadAlone(t *testing.T) {
 			b.quiet()
 			phone := open(t, file, "", 360, 800, still())
 			if w := eval[int](phone, `document.documentElement.scrollWidth`); w > 360 {
-				t.Errorf("the page is %d px wide on a phone of 360 px: %s", w, eval[string](phone, `[...document.querySelectorAll("body *")].filter(e => e.getBoundingClientRect().right > 361 && !e.closest(".scroll") && !e.closest(".visually-hidden")).slice(0, 5).map(e => e.tagName + "." + e.className).join(" ")`))
+				t.Errorf("the page is %d px wide on a phone of 360 px: %s", w, wide(phone))
 			}
 			phone.picture(s.name + "-phone")
 			phone.quiet()

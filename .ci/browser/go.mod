@@ -14,6 +14,7 @@ require (
 	github.com/gobwas/pool v0.2.1 // indirect
 	github.com/gobwas/ws v1.4.0 // indirect
 	golang.org/x/sys v0.42.0 // indirect
+	modelmend v0.0.0
 )
 
 replace modelmend => ../..

@@ -8,6 +8,7 @@ import (
 
 	"modelmend/compare"
 	"modelmend/fit/dataset"
+	"modelmend/fit/design"
 	"modelmend/fit/equation"
 	"modelmend/web-output/view"
 )
@@ -90,7 +91,8 @@ func writeResults(cmd *cobra.Command, r *view.Results, path string) error {
 func classify(err error) error {
 	var syntax *equation.SyntaxError
 	var study *compare.StudyError
-	if errors.As(err, &syntax) || errors.As(err, &study) {
+	var column *design.UnknownColumnError
+	if errors.As(err, &syntax) || errors.As(err, &study) || errors.As(err, &column) {
 		return &usageError{err}
 	}
 	return err

@@ -290,7 +290,7 @@ func Figure(v float64, digits int) string {
 	if v == 0 {
 		return "0"
 	}
-	s := strconv.FormatFloat(v, 'e', digits-1, 64)
+	s := strconv.FormatFloat(awayFromTie(v, digits), 'e', digits-1, 64)
 	exp, _ := strconv.Atoi(s[strings.IndexByte(s, 'e')+1:])
 	if exp < -5 || exp >= 9 {
 		mantissa := s[:strings.IndexByte(s, 'e')]
@@ -301,6 +301,16 @@ func Figure(v float64, digits int) string {
 	}
 	f, _ := strconv.ParseFloat(s, 64)
 	return minus(strconv.FormatFloat(f, 'f', max(0, digits-1-exp), 64))
+}
+
+// awayFromTie moves a value that lies exactly between two figures to the one further from zero, as script does.
+func awayFromTie(v float64, digits int) float64 {
+	s := strconv.FormatFloat(math.Abs(v), 'e', 60, 64)
+	tail := s[:strings.IndexByte(s, 'e')]
+	if tail = strings.Replace(tail, ".", "", 1)[digits:]; tail[0] == '5' && strings.Trim(tail[1:], "0") == "" {
+		return math.Nextafter(v, math.Copysign(math.Inf(1), v))
+	}
+	return v
 }
 
 func minus(s string) string { return strings.Replace(s, "-", "−", 1) }

@@ -40,7 +40,7 @@ func mathOf(e *equation.Expr) string {
 	esc := template.HTMLEscapeString
 	switch e.Kind {
 	case equation.Name:
-		return "<mtext>" + esc(e.Text) + "</mtext>"
+		return "<mtext>" + esc(clip(e.Text, 32)) + "</mtext>"
 	case equation.Number:
 		return "<mn>" + esc(e.Text) + "</mn>"
 	case equation.Product:
@@ -82,6 +82,15 @@ func mathOf(e *equation.Expr) string {
 		return row("<mi>"+esc(e.Text)+"</mi>", inner)
 	}
 	return "<mtext>" + esc(e.String()) + "</mtext>"
+}
+
+// clip shortens a name that would stand out of a narrow page; the label of the equation holds it whole.
+func clip(s string, n int) string {
+	r := []rune(s)
+	if len(r) <= n {
+		return s
+	}
+	return string(r[:n-1]) + "…"
 }
 
 func factor(e *equation.Expr) string {

@@ -1,0 +1,289 @@
+package page_test
+
+import (
+	"bytes"
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"encoding/json"
+	"fmt"
+	unescape "html"
+	"math"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"regexp"
+	"strings"
+	"testing"
+
+	"modelmend/compare"
+	"modelmend/fit/collinear"
+	"modelmend/fit/dataset"
+	"modelmend/fit/equation"
+	"modelmend/web-output/page"
+	"modelmend/web-output/view"
+)
+
+func render(t *testing.T, csv, eq string, edit func(*compare.Study)) string {
+	t.Helper()
+	table, err := dataset.Read(strings.NewReader(csv), "table.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	s := &compare.Study{Data: "table.csv", Equation: eq, Purpose: compare.Explain, Seed: 1, Cutoffs: collinear.DefaultCutoffs()}
+	if edit != nil {
+		edit(s)
+	}
+	c, err := compare.Run(context.Background(), table, s, compare.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return write(t, view.Build(c, "data: table.csv\nequation: "+eq+"\n", "test"))
+}
+
+func write(t *testing.T, r *view.Results) string {
+	t.Helper()
+	var b bytes.Buffer
+	if err := page.Write(&b, r); err != nil {
+		t.Fatal(err)
+	}
+	return b.String()
+}
+
+// numbers makes rows of p regressors with a tangle between the first two.
+func numbers(rows, p int) string {
+	var b strings.Builder
+	b.WriteString("y")
+	for j := range p {
+		fmt.Fprintf(&b, ",x%d", j)
+	}
+	b.WriteByte('\n')
+	state := uint64(9)
+	next := func() float64 {
+		state = state*6364136223846793005 + 1442695040888963407
+		return float64(state>>40) / float64(1<<24)
+	}
+	for range rows {
+		first := next()
+		fmt.Fprintf(&b, "%.5f", first+next())
+		for j := range p {
+			v := next()
+			if j < 2 {
+				v = first + 0.1*v
+			}
+			fmt.Fprintf(&b, ",%.5f", v)
+		}
+		b.WriteByte('\n')
+	}
+	return b.String()
+}
+
+func terms(p int) string {
+	var t []string
+	for j := range p {
+		t = append(t, fmt.Sprintf("x%d", j))
+	}
+	return "y = " + strings.Join(t, " + ")
+}
+
+var remote = regexp.MustCompile(`(?i)(src|href)\s*=\s*["']?\s*(https?:)?//`)
+
+// sane checks what must hold of every page.
+func sane(t *testing.T, html string) {
+	t.Helper()
+	if !strings.Contains(unescape.UnescapeString(html), "default-src 'none'; script-src 'sha256-") {
+		t.Error("the page has no strict policy")
+	}
+	if m := remote.FindString(html); m != "" {
+		t.Errorf("the page refers to something remote: %s", m)
+	}
+	for _, want := range []string{`<html lang="en">`, "Content-Security-Policy", `id="view"`, "No row leaves your machine"} {
+		if !strings.Contains(html, want) {
+			t.Errorf("the page lacks %q", want)
+		}
+	}
+	if strings.Count(html, "<h1") != 1 {
+		t.Error("the page has not exactly one h1")
+	}
+	if n := strings.Count(html, "<script"); n != 3 {
+		t.Errorf("the page has %d script elements, want 3", n)
+	}
+	if strings.Contains(html, "ZgotmplZ") || strings.Contains(html, "<no value>") {
+		t.Error("the template refused or lacked a value")
+	}
+	for _, w := range []string{"too small", "rules of thumb", "association", "referee", "data custodian"} {
+		if !strings.Contains(html[:strings.Index(html, "<main>")], w) {
+			t.Errorf("the first screen lacks the caution %q", w)
+		}
+	}
+	data := html[strings.Index(html, `id="view">`)+len(`id="view">`):]
+	data = data[:strings.Index(data, "</script>")]
+	var v any
+	if err := json.Unmarshal([]byte(data), &v); err != nil {
+		t.Errorf("the data block is not JSON: %v", err)
+	}
+}
+
+func TestModelsOfEverySize(t *testing.T) {
+	for name, html := range map[string]string{
+		"one regressor":          render(t, numbers(40, 1), terms(1), nil),
+		"sixty regressors":       render(t, numbers(200, 60), terms(60), func(s *compare.Study) { s.Folds = compare.FoldSpec{Kind: "random", Count: 3, Repeats: 1} }),
+		"twelve rows":            render(t, numbers(12, 3), terms(3), nil),
+		"no constant":            render(t, numbers(40, 3), terms(3), func(s *compare.Study) { s.NoConstant = true }),
+		"exact dependency":       render(t, numbers(40, 3), terms(3)+" + (x0+x1)", nil),
+		"more columns than rows": render(t, numbers(8, 9), terms(9), nil),
+		"powers":                 render(t, numbers(60, 3), "y = x0 + x0^2 + x0*x2 + x2 + x1", func(s *compare.Study) { s.Focal = []string{"x0"} }),
+	} {
+		t.Run(name, func(t *testing.T) { sane(t, html) })
+	}
+}
+
+func TestDiagnosisAlone(t *testing.T) {
+	table, err := dataset.Read(strings.NewReader(numbers(30, 2)), "table.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	c, err := compare.Check(context.Background(), table, &compare.Study{Data: "table.csv", Equation: terms(2), Purpose: compare.Explain, Cutoffs: collinear.DefaultCutoffs()}, compare.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	sane(t, write(t, view.Build(c, "", "test")))
+}
+
+// TestHostileNames: names that attack stand in the page as text only.
+func TestHostileNames(t *testing.T) {
+	raw, err := os.ReadFile(filepath.Join("..", "..", "testdata", "hostile", "names.csv"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	table, err := dataset.Read(bytes.NewReader(raw), "names.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var parts []string
+	for _, c := range table.Columns[1:] {
+		parts = append(parts, equation.Quote(c.Name))
+	}
+	html := render(t, string(raw), "y = "+strings.Join(parts, " + "), func(s *compare.Study) { s.ShowSmallCells = true })
+	sane(t, html)
+	for _, bad := range []string{"<script>alert", "<img", "<b>bold", "onerror=alert(3)>"} {
+		if strings.Contains(html, bad) {
+			t.Errorf("the page holds %q unescaped", bad)
+		}
+	}
+}
+
+// TestNoRowLeaves: no value of a single row stands in the page or the results. Each row carries a number found nowhere else.
+func TestNoRowLeaves(t *testing.T) {
+	var b strings.Builder
+	b.WriteString("y,a,b\n")
+	var unique []string
+	for i := range 60 {
+		u := fmt.Sprintf("%d.%06d", 31+i, (i*7919+104729)%1000000)
+		unique = append(unique, u)
+		fmt.Fprintf(&b, "%d,%s,%d\n", i*i%23, u, i*13%29)
+	}
+	html := render(t, b.String(), "y = a + b", nil)
+	for _, u := range unique {
+		if strings.Contains(html, u) {
+			t.Errorf("the value %s of one row stands in the page", u)
+		}
+	}
+}
+
+// TestFigures holds the Go twin to a table made by hand; format.test.js holds the other to the same.
+func TestFigures(t *testing.T) {
+	raw, err := os.ReadFile("testdata/figures.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var rows [][3]any
+	if err := json.Unmarshal(raw, &rows); err != nil {
+		t.Fatal(err)
+	}
+	for _, r := range rows {
+		v := math.NaN()
+		if r[0] != nil {
+			v = r[0].(float64)
+		}
+		if got := page.Figure(v, int(r[1].(float64))); got != r[2] {
+			t.Errorf("%v with %v digits: got %q, want %q", r[0], r[1], got, r[2])
+		}
+	}
+}
+
+// TestVendoredLibrary holds the hash stated in VENDOR.md and what must not stand in an inlined script.
+func TestVendoredLibrary(t *testing.T) {
+	dir := filepath.Join("assets", "third-party", "echarts")
+	lib, err := os.ReadFile(filepath.Join(dir, "echarts.js"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	note, err := os.ReadFile(filepath.Join(dir, "VENDOR.md"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	sum := sha256.Sum256(lib)
+	if !bytes.Contains(note, []byte(hex.EncodeToString(sum[:]))) {
+		t.Errorf("VENDOR.md does not state the SHA-256 of the file, %x", sum)
+	}
+	for _, bad := range []string{"</script", "<!--", "\r", "eval(", "new Function"} {
+		if bytes.Contains(lib, []byte(bad)) {
+			t.Errorf("the library holds %q", bad)
+		}
+	}
+	for _, m := range regexp.MustCompile(`https?://[^"'\x60 ]+`).FindAll(lib, -1) {
+		if !bytes.HasPrefix(m, []byte("http://www.w3.org/")) {
+			t.Errorf("the library names the address %s", m)
+		}
+	}
+	for _, l := range []string{"LICENSE-echarts", "NOTICE-echarts", "LICENSE-zrender", "LICENSE-d3", "LICENSE-tslib"} {
+		if _, err := os.Stat(filepath.Join(dir, l)); err != nil {
+			t.Error(err)
+		}
+	}
+}
+
+// TestJoinedScript: the modules joined are valid script without module words, and no name stands twice at the top. The syntax check
+// needs node and is left to .ci/run where there is none.
+func TestJoinedScript(t *testing.T) {
+	script, err := page.Script()
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, line := range strings.Split(script, "\n") {
+		if strings.HasPrefix(line, "import ") || strings.HasPrefix(line, "export ") {
+			t.Errorf("a module word is left: %s", line)
+		}
+	}
+	seen := map[string]bool{}
+	for _, m := range regexp.MustCompile(`(?m)^(?:async )?(?:function|const|let|class) (\w+)`).FindAllStringSubmatch(script, -1) {
+		if seen[m[1]] {
+			t.Errorf("%s is declared twice", m[1])
+		}
+		seen[m[1]] = true
+	}
+	if strings.Contains(script, "innerHTML") || strings.Contains(script, "</script") {
+		t.Error("the script holds innerHTML or closes its own element")
+	}
+	if node, err := exec.LookPath("node"); err == nil {
+		file := filepath.Join(t.TempDir(), "page.js")
+		if err := os.WriteFile(file, []byte(script), 0o600); err != nil {
+			t.Fatal(err)
+		}
+		if out, err := exec.Command(node, "--check", file).CombinedOutput(); err != nil {
+			t.Errorf("node --check: %s", out)
+		}
+	}
+}
+
+// failing refuses to be written to.
+type failing struct{}
+
+func (failing) Write([]byte) (int, error) { return 0, os.ErrClosed }
+
+func TestWriteReportsFailure(t *testing.T) {
+	if err := page.Write(failing{}, &view.Results{Run: view.Run{}, Diagnosis: view.Diagnosis{}}); err == nil {
+		t.Error("a failed write went unnoticed")
+	}
+}
