@@ -105,6 +105,8 @@ func (c *Comparison) sentence(e LedgerEntry, name, now, then string) string {
 	factor := math.Sqrt(e.VIF)
 	s := fmt.Sprintf("The interval of %s, %s to %s, %s. ", name, brief(e.Low), brief(e.High), now)
 	switch {
+	case len(c.Problem.Names) == 1:
+		return s + "It is the only regressor: collinearity plays no part."
 	case factor < 1.05:
 		return s + "The other regressors hardly touch its standard error: collinearity plays no part."
 	case e.ConclusionChanges:

@@ -55,7 +55,11 @@ func rowsLine(r *view.Results) string {
 		parts = append(parts, p)
 	}
 	if len(parts) > 4 {
-		parts = append(parts[:4], fmt.Sprintf("%d more reasons", len(parts)-4))
+		rest := 0
+		for _, a := range r.Run.Rows.SetAside[4:] {
+			rest += a.Count
+		}
+		parts = append(parts[:4], fmt.Sprintf("%d for other reasons", rest))
 	}
 	if len(parts) > 0 {
 		s += "; set aside: " + strings.Join(parts, ", ")
@@ -113,20 +117,34 @@ func ladderLines(r *view.Results) []string {
 	for _, a := range r.Alternatives {
 		labelWidth = max(labelWidth, min(34, utf8.RuneCountInString(a.Label)))
 	}
-	out := []string{fmt.Sprintf("%s %12s %12s %14s  %s", pad(name, labelWidth), "coefficient", "standard", "out-of-sample", "what it is")}
-	out = append(out, fmt.Sprintf("%s %12s %12s %14s", pad("", labelWidth), "", "error", "error"))
-	for _, a := range r.Alternatives {
+	out := []string{fmt.Sprintf("%s %12s %16s %20s", pad(name, labelWidth), "coefficient", "standard error", "out-of-sample error")}
+	base, _ := find(r.Alternatives[0], name)
+	alike := 0
+	for i, a := range r.Alternatives {
 		k, ok := find(a, name)
 		if !ok {
+			continue
+		}
+		if i > 0 && nearly(k, base) {
+			alike++
 			continue
 		}
 		status := k.Status
 		if status == "estimated" {
 			status = ""
 		}
-		out = append(out, strings.TrimRight(fmt.Sprintf("%s %12s %12s %14s  %s", pad(a.Label, labelWidth), cell(k.Estimate), cell(k.StandardError), cell(a.OutOfSample.RMSE), status), " "))
+		out = append(out, strings.TrimRight(fmt.Sprintf("%s %12s %16s %20s  %s", pad(a.Label, labelWidth), cell(k.Estimate), cell(k.StandardError), view.Four(a.OutOfSample.RMSE), status), " "))
+	}
+	if alike > 0 {
+		out = append(out, fmt.Sprintf("(%d more leave it within 5 %% of what it is when left alone)", alike))
 	}
 	return out
+}
+
+// nearly: the same coefficient within 5 per cent, and its standard error too.
+func nearly(k, base view.Coefficient) bool {
+	near := func(a, b view.Num) bool { return math.Abs(float64(a)-float64(b)) <= 0.05*math.Abs(float64(b)) }
+	return k.Status == base.Status && near(k.Estimate, base.Estimate) && near(k.StandardError, base.StandardError)
 }
 
 func find(a view.Alternative, name string) (view.Coefficient, bool) {
@@ -173,8 +191,7 @@ func checkText(r *view.Results) string {
 	for _, g := range r.Diagnosis.Regressors {
 		nameWidth = max(nameWidth, min(36, utf8.RuneCountInString(g.Name)))
 	}
-	fmt.Fprintf(&b, "\n%s %16s %18s %10s %12s\n", pad("coefficient", nameWidth), "standard error x", "explained by the", "VIF", "VIF with powers")
-	fmt.Fprintf(&b, "%s %16s %18s %10s %12s\n", pad("", nameWidth), "", "others", "", "centred")
+	fmt.Fprintf(&b, "\n%s  %16s  %23s  %8s  %19s\n", pad("coefficient", nameWidth), "standard error x", "explained by the others", "VIF", "VIF, powers centred")
 	for _, g := range r.Diagnosis.Regressors {
 		vif := cell(g.VIF)
 		if g.VIF.IsNone() {
@@ -184,7 +201,7 @@ func checkText(r *view.Results) string {
 		if g.VIFCentered.IsNone() {
 			centered = "exact"
 		}
-		fmt.Fprintf(&b, "%s %16s %18s %10s %12s\n", pad(g.Name, nameWidth), cell(g.StandardErrorFactor), percent(float64(g.AuxiliaryR2)), vif, centered)
+		fmt.Fprintf(&b, "%s  %16s  %23s  %8s  %19s\n", pad(g.Name, nameWidth), cell(g.StandardErrorFactor), percent(float64(g.AuxiliaryR2)), vif, centered)
 	}
 	if len(r.Diagnosis.NearDependencies) > 0 {
 		b.WriteString("\nWhat moves together:\n")

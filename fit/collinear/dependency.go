@@ -433,7 +433,7 @@ func write(names []string, d Dependency) string {
 		switch {
 		case name == "":
 			b.WriteString(number(a, digits))
-		case a == 1:
+		case number(a, digits) == "1":
 			b.WriteString(name)
 		default:
 			b.WriteString(number(a, digits) + "*" + name)

@@ -362,6 +362,7 @@ var functions = template.FuncMap{
 		return minus(strconv.FormatFloat(float64(v), 'f', 3, 64))
 	},
 	"sixty":     func(v view.Num) string { return strconv.FormatFloat(60*float64(v), 'f', 1, 64) },
+	"little":    func(v view.Num) bool { return v.IsNone() || v < 0.005 },
 	"lowdigits": func(v view.Num) bool { return v < 6 },
 	"rungmark": func(band, m mark, a axis, hollow bool) map[string]any {
 		return map[string]any{"Band": band, "Mark": m, "Zero": a.at(0), "Hollow": hollow}

@@ -40,7 +40,7 @@ func mathOf(e *equation.Expr) string {
 	esc := template.HTMLEscapeString
 	switch e.Kind {
 	case equation.Name:
-		return "<mtext>" + esc(clip(e.Text, 32)) + "</mtext>"
+		return "<mtext>" + esc(clip(e.Text, 22)) + "</mtext>"
 	case equation.Number:
 		return "<mn>" + esc(e.Text) + "</mn>"
 	case equation.Product:

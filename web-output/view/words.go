@@ -23,8 +23,8 @@ func Short(v float64) string {
 	return s
 }
 
-// four prints four significant digits, trailing zeros kept, as errors that lie close together need.
-func four(v Num) string {
+// Four prints four significant digits, trailing zeros kept, as errors that lie close together need.
+func Four(v Num) string {
 	f := float64(v)
 	if a := math.Abs(f); f == 0 || math.IsNaN(f) || math.IsInf(f, 0) || a < 1e-6 || a >= 1e9 {
 		return strconv.FormatFloat(f, 'g', 4, 64)
@@ -173,9 +173,9 @@ func predictionSentence(r *Results) string {
 	}
 	b, as := r.Alternatives[best], r.Alternatives[0]
 	if best == 0 {
-		return fmt.Sprintf("No alternative predicts held-out rows better than the model left alone (out-of-sample error %s); %d do clearly worse.", four(as.OutOfSample.RMSE), worse)
+		return fmt.Sprintf("No alternative predicts held-out rows better than the model left alone (out-of-sample error %s); %d do clearly worse.", Four(as.OutOfSample.RMSE), worse)
 	}
-	s := fmt.Sprintf("%s has the smallest out-of-sample error, %s against %s for the model left alone", b.Label, four(b.OutOfSample.RMSE), four(as.OutOfSample.RMSE))
+	s := fmt.Sprintf("%s has the smallest out-of-sample error, %s against %s for the model left alone", b.Label, Four(b.OutOfSample.RMSE), Four(as.OutOfSample.RMSE))
 	if b.OutOfSample.Difference.High < 0 {
 		return s + "; the difference is beyond its uncertainty."
 	}
