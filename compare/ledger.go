@@ -3,8 +3,8 @@ package compare
 import (
 	"fmt"
 	"math"
-	"strconv"
 
+	"modelmend/fit/figures"
 	"modelmend/fit/tail"
 )
 
@@ -124,18 +124,5 @@ func again(then string) string {
 	return then
 }
 
-// brief prints three significant digits without an exponent where the size allows.
-func brief(v float64) string {
-	if math.IsNaN(v) {
-		return "not available"
-	}
-	if math.IsInf(v, 0) {
-		return "infinite"
-	}
-	s := strconv.FormatFloat(v, 'g', 3, 64)
-	if a := math.Abs(v); v == 0 || (a >= 1e-6 && a < 1e9) {
-		f, _ := strconv.ParseFloat(s, 64)
-		s = strconv.FormatFloat(f, 'f', -1, 64)
-	}
-	return s
-}
+// brief prints a number for prose.
+func brief(v float64) string { return figures.Short(v, 3) }

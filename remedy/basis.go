@@ -6,6 +6,7 @@ import (
 	"strconv"
 	"strings"
 
+	"modelmend/fit/figures"
 	"modelmend/fit/linear"
 	"modelmend/fit/tail"
 )
@@ -135,18 +136,8 @@ func smallest(v []float64, later bool) int {
 	return best
 }
 
-// say prints a number for prose: four significant digits, no exponent where the size allows.
-func say(v float64) string {
-	if math.IsNaN(v) {
-		return "not available"
-	}
-	s := strconv.FormatFloat(v, 'g', 4, 64)
-	if a := math.Abs(v); v == 0 || (a >= 1e-6 && a < 1e9) {
-		f, _ := strconv.ParseFloat(s, 64)
-		s = strconv.FormatFloat(f, 'f', -1, 64)
-	}
-	return s
-}
+// say prints a number for prose.
+func say(v float64) string { return figures.Short(v, 4) }
 
 func sayP(p float64) string {
 	if p < 0.001 {

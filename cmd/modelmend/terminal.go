@@ -206,7 +206,7 @@ func checkText(r *view.Results) string {
 	if len(r.Diagnosis.NearDependencies) > 0 {
 		b.WriteString("\nWhat moves together:\n")
 		for _, d := range r.Diagnosis.NearDependencies {
-			for _, l := range wrap(fmt.Sprintf("  %s  [%s, R² %s]", d.Equation, d.Kind, view.Short(float64(d.R2))), "      ") {
+			for _, l := range wrap(fmt.Sprintf("  %s  [%s, R² %s]", d.Equation, d.Kind, view.Four(d.R2)), "      ") {
 				b.WriteString("  " + l + "\n")
 			}
 		}

@@ -12,6 +12,7 @@ import (
 	"sort"
 	"strings"
 
+	"modelmend/fit/figures"
 	"modelmend/fit/linear"
 	"modelmend/fit/reduction"
 )
@@ -361,10 +362,5 @@ func list(names []string, cols []int, vif []float64) string {
 	return strings.Join(parts, ", ")
 }
 
-// short prints three significant digits, whole numbers from a thousand on.
-func short(v float64) string {
-	if a := math.Abs(v); a >= 1000 && a < 1e15 {
-		return fmt.Sprintf("%.0f", v)
-	}
-	return fmt.Sprintf("%.3g", v)
-}
+// short prints a number for prose.
+func short(v float64) string { return figures.Short(v, 3) }

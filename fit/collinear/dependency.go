@@ -8,6 +8,7 @@ import (
 	"strings"
 
 	"modelmend/fit/doubledouble"
+	"modelmend/fit/figures"
 	"modelmend/fit/linear"
 )
 
@@ -432,11 +433,11 @@ func write(names []string, d Dependency) string {
 		a := math.Abs(v)
 		switch {
 		case name == "":
-			b.WriteString(number(a, digits))
-		case number(a, digits) == "1":
+			b.WriteString(figures.Short(a, digits))
+		case figures.Short(a, digits) == "1":
 			b.WriteString(name)
 		default:
-			b.WriteString(number(a, digits) + "*" + name)
+			b.WriteString(figures.Short(a, digits) + "*" + name)
 		}
 	}
 	for i, j := range d.Columns {
@@ -455,14 +456,4 @@ func write(names []string, d Dependency) string {
 		fmt.Fprintf(&b, " (holds in %d of %d rows)", d.RowsHolding, d.RowsUsed)
 	}
 	return b.String()
-}
-
-// number prints v with so many significant digits, without an exponent where the size allows.
-func number(v float64, digits int) string {
-	s := strconv.FormatFloat(v, 'g', digits, 64)
-	f, _ := strconv.ParseFloat(s, 64)
-	if a := math.Abs(f); a >= 1e-4 && a < 1e15 {
-		return strconv.FormatFloat(f, 'f', -1, 64)
-	}
-	return s
 }

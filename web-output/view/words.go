@@ -3,35 +3,18 @@ package view
 import (
 	"fmt"
 	"math"
-	"strconv"
 	"strings"
 
 	"modelmend/compare"
 	"modelmend/fit/collinear"
+	"modelmend/fit/figures"
 )
 
-// Short prints three significant digits for prose, without an exponent where the size allows.
-func Short(v float64) string {
-	if math.IsNaN(v) || math.IsInf(v, 0) {
-		return "not available"
-	}
-	s := strconv.FormatFloat(v, 'g', 3, 64)
-	if a := math.Abs(v); v == 0 || (a >= 1e-6 && a < 1e9) {
-		f, _ := strconv.ParseFloat(s, 64)
-		s = strconv.FormatFloat(f, 'f', -1, 64)
-	}
-	return s
-}
+// Short prints three significant digits for prose.
+func Short(v float64) string { return figures.Short(v, 3) }
 
 // Four prints four significant digits, trailing zeros kept, as errors that lie close together need.
-func Four(v Num) string {
-	f := float64(v)
-	if a := math.Abs(f); f == 0 || math.IsNaN(f) || math.IsInf(f, 0) || a < 1e-6 || a >= 1e9 {
-		return strconv.FormatFloat(f, 'g', 4, 64)
-	}
-	e := int(math.Floor(math.Log10(math.Abs(f))))
-	return strconv.FormatFloat(f, 'f', max(0, 3-e), 64)
-}
+func Four(v Num) string { return figures.Fixed(float64(v), 4) }
 
 // answers says in plain sentences what there is to say, the coefficient of interest first.
 func answers(c *compare.Comparison, r *Results) Answers {

@@ -1,0 +1,55 @@
+// Package figures prints numbers for prose.
+//
+// A number and a count of significant digits go in, text comes out. It refuses nothing: what is not a finite number is said in words. It stands
+// first in the flow and imports nothing of the project.
+package figures
+
+import (
+	"math"
+	"strconv"
+)
+
+// Short prints v with so many significant digits and no trailing zeros: 0.05, 12300, 1.2e-09.
+func Short(v float64, digits int) string {
+	if text, ok := unusual(v); ok {
+		return text
+	}
+	s := strconv.FormatFloat(v, 'g', digits, 64)
+	if plain(v) {
+		f, _ := strconv.ParseFloat(s, 64)
+		return strconv.FormatFloat(f, 'f', -1, 64)
+	}
+	return s
+}
+
+// Fixed prints v with so many significant digits, trailing zeros kept, as numbers that are compared need: 0.1770.
+func Fixed(v float64, digits int) string {
+	if text, ok := unusual(v); ok {
+		return text
+	}
+	s := strconv.FormatFloat(v, 'e', digits-1, 64)
+	if !plain(v) {
+		return s
+	}
+	f, _ := strconv.ParseFloat(s, 64)
+	if f == 0 {
+		return "0"
+	}
+	return strconv.FormatFloat(f, 'f', max(0, digits-1-int(math.Floor(math.Log10(math.Abs(f))))), 64)
+}
+
+func unusual(v float64) (string, bool) {
+	switch {
+	case math.IsNaN(v):
+		return "not available", true
+	case math.IsInf(v, 0):
+		return "infinite", true
+	}
+	return "", false
+}
+
+// plain: an exponent would be harder to read than the digits.
+func plain(v float64) bool {
+	a := math.Abs(v)
+	return v == 0 || (a >= 1e-6 && a < 1e9)
+}
