@@ -34,6 +34,7 @@ type Alternative struct {
 	asIs  []float64
 	exact bool // as-is has a value for every coefficient
 	s0    float64
+	t     float64 // half width of a 95 % interval in standard errors
 }
 
 // Coefficient is one coefficient of an alternative, in the user's units.
@@ -265,6 +266,7 @@ func (c *Comparison) state(a *Alternative) {
 	a.asIs = append(a.asIs, c.AsIs.Slopes...)
 	a.exact = c.AsIs.NotIdentified == nil
 	a.s0 = c.S
+	a.t = tail.TQuantile(0.95, a.DF)
 	q := len(a.value)
 	factor := a.Fitted.Factor
 	cross := a.Fitted.Cross
@@ -402,8 +404,7 @@ func (c *Comparison) coefficient(a *Alternative, name string, w []float64, st re
 		out.SEReason = "no degrees of freedom are left for the residual variance"
 	default:
 		out.SE = a.S * math.Sqrt(math.Max(0, v))
-		t := tail.TQuantile(0.95, a.DF)
-		out.Low, out.High = out.Estimate-t*out.SE, out.Estimate+t*out.SE
+		out.Low, out.High = out.Estimate-a.t*out.SE, out.Estimate+a.t*out.SE
 		if out.SE > 0 {
 			out.T = out.Estimate / out.SE
 			out.P = tail.T(out.T, a.DF)

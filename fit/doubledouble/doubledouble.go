@@ -150,6 +150,9 @@ func (x Number) Power(k int) Number {
 //
 // It returns an error when s is not a plain decimal number or is too large for a float64.
 func Parse(s string) (Number, error) {
+	if x, ok := parsePlain(s); ok {
+		return x, nil
+	}
 	if !plainDecimal(s) {
 		return Number{}, fmt.Errorf("%q is not a number", s)
 	}
@@ -158,26 +161,65 @@ func Parse(s string) (Number, error) {
 		return Number{}, fmt.Errorf("%q is too large", s)
 	}
 	if m, exp, ok := smallDecimal(s); ok {
-		if exp == 0 {
-			return Number{Hi: m}, nil
-		}
-		if exp > 0 && exp <= 22 {
-			p, e := TwoProduct(m, pow10[exp])
-			return Number{p, e}, nil
-		}
-		if exp < 0 && exp >= -22 && m != 0 {
-			return Number{Hi: m}.Div(Number{Hi: pow10[-exp]}).withHi(hi), nil
+		if x, ok := scale(m, exp); ok {
+			return x, nil
 		}
 	}
 	return parseExact(s, hi), nil
 }
 
-// withHi moves rounding in the last place into Lo so that Hi is the correctly rounded value.
-func (x Number) withHi(hi float64) Number {
-	if x.Hi == hi {
-		return x
+// parsePlain reads digits with at most one point and at most 15 digits in all, the form of nearly every cell, in one pass.
+func parsePlain(s string) (Number, bool) {
+	if len(s) == 0 || len(s) > 17 {
+		return Number{}, false
 	}
-	return Number{Hi: hi, Lo: x.Sub(Number{Hi: hi}).Float()}
+	i := 0
+	negative := s[0] == '-'
+	if negative || s[0] == '+' {
+		i = 1
+	}
+	var mant uint64
+	digits, point := 0, -1
+	for ; i < len(s); i++ {
+		c := s[i] - '0'
+		if c <= 9 {
+			mant = mant*10 + uint64(c)
+			digits++
+			continue
+		}
+		if s[i] != '.' || point >= 0 {
+			return Number{}, false
+		}
+		point = digits
+	}
+	if digits == 0 || digits > 15 {
+		return Number{}, false
+	}
+	m := float64(mant)
+	if negative {
+		m = -m
+	}
+	if point < 0 {
+		return Number{Hi: m}, true
+	}
+	return scale(m, point-digits)
+}
+
+// scale returns m * 10^exp for a whole m below 2^53 and |exp| <= 22, where the power of ten is exact: the quotient of two exact numbers is
+// correctly rounded, and what is left of the division is exact as well.
+func scale(m float64, exp int) (Number, bool) {
+	switch {
+	case exp == 0 || m == 0:
+		return Number{Hi: m}, true
+	case exp > 0 && exp <= 22:
+		p, e := TwoProduct(m, pow10[exp])
+		return Number{p, e}, true
+	case exp < 0 && exp >= -22:
+		d := pow10[-exp]
+		hi := m / d
+		return Number{Hi: hi, Lo: math.FMA(-hi, d, m) / d}, true
+	}
+	return Number{}, false
 }
 
 func parseExact(s string, hi float64) Number {
