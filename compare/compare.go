@@ -99,19 +99,18 @@ func prepare(ctx context.Context, t *dataset.Table, study *Study, opt Options, f
 		return nil, nil, err
 	}
 	c.Notes = append(c.Notes, c.Design.Notes...)
-	var assignment [][]int32
-	var counts []int
+	var split reduction.Split
 	if folded {
 		if c.Plan, err = plan(c.Design, study, c.labels); err != nil {
 			return nil, nil, err
 		}
-		assignment, counts = c.Plan.Assignment, c.Plan.Counts
+		split = reduction.Split{Cell: c.Plan.Cell, Cells: c.Plan.Cells, Fold: c.Plan.Fold, Counts: c.Plan.Counts}
 	}
 	if err := ctx.Err(); err != nil {
 		return nil, nil, err
 	}
 	d := c.Design
-	red, err := reduction.Reduce(d.Columns(), d.Y, d.Constant, assignment, counts, opt.Workers)
+	red, err := reduction.Reduce(d.Columns(), d.Y, d.Constant, split, opt.Workers)
 	if err != nil {
 		return nil, nil, err
 	}
@@ -159,7 +158,7 @@ func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, o
 		in.Groups = append(in.Groups, collinear.Group{Name: t.Name, Columns: t.Columns, Category: t.Category, Products: t.Products})
 	}
 	if cols, differ := d.Centered(); differ && d.Constant {
-		if cr, err := reduction.Reduce(cols, d.Y, d.Constant, nil, nil, opt.Workers); err == nil {
+		if cr, err := reduction.Reduce(cols, d.Y, d.Constant, reduction.Split{}, opt.Workers); err == nil {
 			in.Centered = linear.NewSample(cr, cr.Total)
 			in.CenteredRaw = linear.NewRawSample(cr, cr.Total)
 		}

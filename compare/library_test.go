@@ -74,8 +74,8 @@ func place(c *compare.Comparison, l library, f compare.Fold) int {
 	for r := range f.Repeat {
 		k += c.Plan.Counts[r]
 	}
-	for i, g := range c.Plan.Assignment[f.Repeat] {
-		if int(g) == f.Fold {
+	for i := range c.Plan.Cell {
+		if c.Plan.Of(f.Repeat, i) == f.Fold {
 			return k + l.Assignment[f.Repeat][i]
 		}
 	}

@@ -330,7 +330,10 @@ func TestNestedAgainstPlain(t *testing.T) {
 				}
 				seen++
 				for _, f := range a.Out.Folds {
-					fold := got.Plan.Assignment[f.Repeat]
+					fold := make([]int32, len(r.y))
+					for i := range fold {
+						fold[i] = int32(got.Plan.Of(f.Repeat, i))
+					}
 					var mse float64
 					if direct != nil {
 						held := r.pick(func(i int) bool { return fold[i] == int32(f.Fold) })

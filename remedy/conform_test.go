@@ -52,7 +52,7 @@ func problem(t *testing.T, order func(n int) []int, scale []float64) (*remedy.Pr
 	for k, i := range rows {
 		movedFold[k] = fold[i]
 	}
-	red, err := reduction.Reduce(moved, pick(y, 1), true, [][]int32{movedFold}, []int{5}, 2)
+	red, err := reduction.Reduce(moved, pick(y, 1), true, reduction.Split{Cell: movedFold, Cells: 5, Fold: [][]int32{{0, 1, 2, 3, 4}}, Counts: []int{5}}, 2)
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -31,7 +31,7 @@ func diagnose(t *testing.T, table *dataset.Table, eq string, opt design.Options)
 		t.Fatal(err)
 	}
 	reduce := func(cols []reduction.Column) (*linear.Sample, *linear.Sample) {
-		red, err := reduction.Reduce(cols, d.Y, d.Constant, nil, nil, 1)
+		red, err := reduction.Reduce(cols, d.Y, d.Constant, reduction.Split{}, 1)
 		if err != nil {
 			t.Fatal(err)
 		}

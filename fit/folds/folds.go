@@ -19,19 +19,30 @@ const (
 	Column      Kind = "column"
 )
 
-// Plan gives each of n rows its fold: Assignment[repeat][row], counted from 0. Counts[repeat] is the number of folds.
+// Plan gives each of n rows a cell, and each cell a fold in each repeat: rows of one cell stay together, so that a reduction needs to keep
+// one set of moments a cell, whatever the number of repeats. Cells are counted from 0. Counts[repeat] is the number of folds.
 type Plan struct {
-	Kind       Kind
-	Count      int // folds in each repeat; the largest where fold columns differ
-	Counts     []int
-	Repeats    int
-	Assignment [][]int32
+	Kind    Kind
+	Count   int // folds in each repeat; the largest where fold columns differ
+	Counts  []int
+	Repeats int
+	Cells   int
+	Cell    []int32   // by row
+	Fold    [][]int32 // [repeat][cell]
 }
 
-// chunk is the number of folds' worth of rows that are shuffled together: up to this many rows a fold, the split is
-// one random permutation; beyond, consecutive chunks are permuted on their own, so that memory stays bounded and
-// folds stay balanced.
-const chunk = 4096
+// Of returns the fold of a row in a repeat.
+func (p *Plan) Of(repeat, row int) int { return int(p.Fold[repeat][p.Cell[row]]) }
+
+// Exact is the number of rows up to which a random split draws every row on its own: each row is a cell. Beyond, rows are dealt at random
+// into Groups cells and the cells into folds.
+const Exact = 10000
+
+// Groups is the number of cells of a large random split.
+const Groups = 1000
+
+// block is the number of rows that are dealt into cells together: each block gives every cell the same number of rows.
+const block = 4 * Groups
 
 // NewRandom splits n rows into count balanced folds, repeats times. The same n, count, repeats and seed give the same plan;
 // fold sizes differ by at most one a chunk.
@@ -47,22 +58,33 @@ func NewRandom(n, count, repeats int, seed int64) (*Plan, error) {
 	if n < count {
 		return nil, fmt.Errorf("folds: %d rows cannot fill %d folds; ask for at most %d", n, count, n)
 	}
-	p := &Plan{Kind: Random, Count: count, Repeats: repeats}
-	for r := range repeats {
-		rng := rand.New(rand.NewPCG(uint64(seed), 0xf01d5<<16|uint64(r)))
-		assign := make([]int32, n)
-		for start := 0; start < n; start += chunk * count {
-			end := min(start+chunk*count, n)
-			part := assign[start:end]
-			for i := range part {
-				part[i] = int32(i % count)
-			}
-			rng.Shuffle(len(part), func(i, j int) { part[i], part[j] = part[j], part[i] })
+	p := &Plan{Kind: Random, Count: count, Repeats: repeats, Cells: n, Cell: make([]int32, n)}
+	if n > Exact && count <= Groups/2 {
+		p.Cells = Groups
+		rng := rand.New(rand.NewPCG(uint64(seed), 0xce11))
+		for start := 0; start < n; start += block {
+			deal(p.Cell[start:min(start+block, n)], Groups, rng)
 		}
-		p.Assignment = append(p.Assignment, assign)
+	} else {
+		for i := range p.Cell {
+			p.Cell[i] = int32(i)
+		}
+	}
+	for r := range repeats {
+		fold := make([]int32, p.Cells)
+		deal(fold, count, rand.New(rand.NewPCG(uint64(seed), 0xf01d5<<16|uint64(r))))
+		p.Fold = append(p.Fold, fold)
 		p.Counts = append(p.Counts, count)
 	}
 	return p, nil
+}
+
+// deal gives each place one of so many hands, as evenly as the number of places allows, in random order.
+func deal(places []int32, hands int, rng *rand.Rand) {
+	for i := range places {
+		places[i] = int32(i % hands)
+	}
+	rng.Shuffle(len(places), func(i, j int) { places[i], places[j] = places[j], places[i] })
 }
 
 // NewLeaveOneOut holds out each of n rows in turn; n must be at least 2.
@@ -70,11 +92,11 @@ func NewLeaveOneOut(n int) (*Plan, error) {
 	if n < 2 {
 		return nil, fmt.Errorf("folds: leaving one out needs at least 2 rows, found %d", n)
 	}
-	assign := make([]int32, n)
-	for i := range assign {
-		assign[i] = int32(i)
+	each := make([]int32, n)
+	for i := range each {
+		each[i] = int32(i)
 	}
-	return &Plan{Kind: LeaveOneOut, Count: n, Repeats: 1, Counts: []int{n}, Assignment: [][]int32{assign}}, nil
+	return &Plan{Kind: LeaveOneOut, Count: n, Repeats: 1, Counts: []int{n}, Cells: n, Cell: each, Fold: [][]int32{each}}, nil
 }
 
 // FromLabels takes the folds from columns, one column a repeat: rows with equal labels share a fold. Folds are
@@ -85,7 +107,10 @@ func FromLabels(columns [][]string) (*Plan, error) {
 	if len(columns) == 0 {
 		return nil, fmt.Errorf("folds: kind column needs the name of at least one column")
 	}
-	p := &Plan{Kind: Column, Repeats: len(columns)}
+	p := &Plan{Kind: Column, Repeats: len(columns), Cell: make([]int32, len(columns[0]))}
+	cells := map[string]int32{}
+	var first []int // the first row of each cell
+	folds := make([][]int32, len(columns))
 	for c, labels := range columns {
 		if len(labels) != len(columns[0]) {
 			return nil, fmt.Errorf("folds: fold columns differ in length")
@@ -100,12 +125,34 @@ func FromLabels(columns [][]string) (*Plan, error) {
 			}
 			assign[i] = f
 		}
+		folds[c] = assign
 		if len(seen) < 2 {
 			return nil, fmt.Errorf("folds: fold column %d of %d has %d distinct value, at least 2 are needed", c+1, len(columns), len(seen))
 		}
-		p.Assignment = append(p.Assignment, assign)
 		p.Counts = append(p.Counts, len(seen))
 		p.Count = max(p.Count, len(seen))
+	}
+	// Rows that share their fold in every column share a cell.
+	for i := range p.Cell {
+		key := ""
+		for c := range folds {
+			key += fmt.Sprintf("%d ", folds[c][i])
+		}
+		k, ok := cells[key]
+		if !ok {
+			k = int32(len(cells))
+			cells[key] = k
+			first = append(first, i)
+		}
+		p.Cell[i] = k
+	}
+	p.Cells = len(cells)
+	for c := range folds {
+		fold := make([]int32, p.Cells)
+		for k, row := range first {
+			fold[k] = folds[c][row]
+		}
+		p.Fold = append(p.Fold, fold)
 	}
 	return p, nil
 }

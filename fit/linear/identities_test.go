@@ -198,7 +198,7 @@ func TestTrainingIsTotalMinusFold(t *testing.T) {
 	for i := range fold {
 		fold[i] = int32(i)
 	}
-	red, err := reduction.Reduce(x, y, true, [][]int32{fold}, []int{45}, 2)
+	red, err := reduction.Reduce(x, y, true, reduction.Split{Cell: fold, Cells: 45, Fold: [][]int32{fold}, Counts: []int{45}}, 2)
 	if err != nil {
 		t.Fatal(err)
 	}

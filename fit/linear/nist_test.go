@@ -53,7 +53,7 @@ func power(c reduction.Column, k int) reduction.Column {
 
 func sampleOf(t testing.TB, x []reduction.Column, y reduction.Column, constant bool) *Sample {
 	t.Helper()
-	red, err := reduction.Reduce(x, y, constant, nil, nil, 1)
+	red, err := reduction.Reduce(x, y, constant, reduction.Split{}, 1)
 	if err != nil {
 		t.Fatal(err)
 	}

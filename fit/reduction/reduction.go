@@ -120,35 +120,55 @@ type Reduction struct {
 	Parts    [][]*Moments // [repeat][fold]
 }
 
-// Reduce forms the moments of the regressors x (p columns of n rows) and of y for every fold of every repeat.
-// assignment[repeat][row] is the fold, counts[repeat] the number of folds; both may be empty, which gives only the
-// total. With constant the first row serves as origin, so that a column with a large mean loses no digits.
+// Split says how rows fall into folds: row i is in Cell[i], and that cell in Fold[repeat][cell], one of Counts[repeat] folds. The zero value
+// asks for the total alone.
+type Split struct {
+	Cell   []int32
+	Cells  int
+	Fold   [][]int32
+	Counts []int
+}
+
+// Reduce forms the moments of the regressors x (p columns of n rows) and of y for every fold of every repeat. With constant the first row
+// serves as origin, so that a column with a large mean loses no digits.
 //
-// The result is the same for any number of workers, as each fold sums its rows in file order.
-// It returns an error when columns differ in length. Cost O(repeats n q^2).
-func Reduce(x []Column, y Column, constant bool, assignment [][]int32, counts []int, workers int) (*Reduction, error) {
+// Where cells hold several rows each, rows are summed once into cells and cells into folds, so that the cost does not grow with the number
+// of repeats. Each sum takes its rows in file order in one worker, so that the result is the same for any number of workers.
+//
+// It returns an error when columns differ in length. Cost O(n q^2), times the repeats where every row is a cell.
+func Reduce(x []Column, y Column, constant bool, split Split, workers int) (*Reduction, error) {
 	n := len(y.Hi)
 	cols := append(append([]Column{}, x...), y)
-	q := len(cols)
 	for j, c := range cols {
 		if len(c.Hi) != n || (c.Lo != nil && len(c.Lo) != n) {
 			return nil, fmt.Errorf("reduction: column %d has %d rows, expected %d", j+1, len(c.Hi), n)
 		}
 	}
-	red := &Reduction{P: len(x), Constant: constant, Origin: make([]doubledouble.Number, q)}
+	red := &Reduction{P: len(x), Constant: constant, Origin: make([]doubledouble.Number, len(cols))}
 	if constant && n > 0 {
 		for j, c := range cols {
 			red.Origin[j] = doubledouble.From(c.Hi[0])
 		}
 	}
-	if len(assignment) == 0 {
-		assignment, counts = [][]int32{make([]int32, n)}, []int{1}
-		red.Parts = reduceAll(cols, red.Origin, assignment, counts, workers)
-		red.Total = red.Parts[0][0]
-		red.Parts = nil
+	workers = max(1, workers)
+	switch {
+	case len(split.Fold) == 0:
+		red.Total = sums(cols, red.Origin, make([]int32, n), 1, 1)[0]
 		return red, nil
+	case 2*split.Cells <= n:
+		cells := sums(cols, red.Origin, split.Cell, split.Cells, workers)
+		for r, fold := range split.Fold {
+			red.Parts = append(red.Parts, gather(cells, fold, split.Counts[r]))
+		}
+	default:
+		for r, fold := range split.Fold {
+			of := make([]int32, n)
+			for i, c := range split.Cell {
+				of[i] = fold[c]
+			}
+			red.Parts = append(red.Parts, sums(cols, red.Origin, of, split.Counts[r], workers))
+		}
 	}
-	red.Parts = reduceAll(cols, red.Origin, assignment, counts, workers)
 	red.Total = red.Parts[0][0]
 	for _, part := range red.Parts[0][1:] {
 		red.Total = red.Total.Plus(part)
@@ -156,31 +176,50 @@ func Reduce(x []Column, y Column, constant bool, assignment [][]int32, counts []
 	return red, nil
 }
 
-func reduceAll(cols []Column, origin []doubledouble.Number, assignment [][]int32, counts []int, workers int) [][]*Moments {
-	parts := make([][]*Moments, len(assignment))
-	limit := make(chan struct{}, max(1, workers))
+// gather adds the moments of cells into folds.
+func gather(cells []*Moments, fold []int32, count int) []*Moments {
+	out := make([]*Moments, count)
+	for c, m := range cells {
+		f := fold[c]
+		if out[f] == nil {
+			out[f] = m
+		} else {
+			out[f] = out[f].Plus(m)
+		}
+	}
+	for f := range out {
+		if out[f] == nil {
+			out[f] = NewMoments(cells[0].Q)
+		}
+	}
+	return out
+}
+
+// sums forms the moments of each part; row i is in part of[i]. A worker takes every workers-th part.
+func sums(cols []Column, origin []doubledouble.Number, of []int32, parts, workers int) []*Moments {
+	out := make([]*Moments, parts)
+	for f := range out {
+		out[f] = NewMoments(len(cols))
+	}
+	workers = min(workers, parts)
 	var wg sync.WaitGroup
-	for r := range assignment {
+	for w := range workers {
 		wg.Add(1)
-		limit <- struct{}{}
 		go func() {
 			defer wg.Done()
-			parts[r] = reduceOne(cols, origin, assignment[r], counts[r])
-			<-limit
+			sumShare(cols, origin, of, out, w, workers)
 		}()
 	}
 	wg.Wait()
-	return parts
+	return out
 }
 
-func reduceOne(cols []Column, origin []doubledouble.Number, folds []int32, count int) []*Moments {
-	q := len(cols)
-	out := make([]*Moments, count)
-	for f := range out {
-		out[f] = NewMoments(q)
-	}
-	hi, lo := make([]float64, q), make([]float64, q)
-	for row, f := range folds {
+func sumShare(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, share, shares int) {
+	hi, lo := make([]float64, len(cols)), make([]float64, len(cols))
+	for row, f := range of {
+		if int(f)%shares != share {
+			continue
+		}
 		for j, c := range cols {
 			h, e := doubledouble.TwoSum(c.Hi[row], -origin[j].Hi)
 			if c.Lo != nil {
@@ -190,8 +229,7 @@ func reduceOne(cols []Column, origin []doubledouble.Number, folds []int32, count
 		}
 		out[f].add(hi, lo)
 	}
-	for _, m := range out {
-		m.settle()
+	for f := share; f < len(out); f += shares {
+		out[f].settle()
 	}
-	return out
 }

@@ -20,7 +20,7 @@ func TestMomentsAgainstExact(t *testing.T) {
 		y.Hi = append(y.Hi, -1e9+rng.Float64())
 	}
 	for _, constant := range []bool{true, false} {
-		red, err := Reduce([]Column{x}, y, constant, nil, nil, 1)
+		red, err := Reduce([]Column{x}, y, constant, Split{}, 1)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -57,7 +57,7 @@ func TestFoldsAddUp(t *testing.T) {
 		y.Hi = append(y.Hi, rng.NormFloat64())
 		folds[0][i], folds[1][i] = int32(i%4), int32(rng.IntN(4))
 	}
-	red, err := Reduce(x, y, true, folds, []int{4, 4}, 2)
+	red, err := Reduce(x, y, true, rowsAsCells(folds, 4, 4), 2)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -92,11 +92,11 @@ func TestWorkersAndShapes(t *testing.T) {
 	x := []Column{{Hi: []float64{1, 2, 4}}, {Hi: []float64{0, 1, 0}}}
 	y := Column{Hi: []float64{3, 1, 2}}
 	folds := [][]int32{{0, 1, 0}, {1, 1, 0}}
-	a, err := Reduce(x, y, true, folds, []int{2, 2}, 1)
+	a, err := Reduce(x, y, true, rowsAsCells(folds, 2, 2), 1)
 	if err != nil {
 		t.Fatal(err)
 	}
-	b, err := Reduce(x, y, true, folds, []int{2, 2}, 8)
+	b, err := Reduce(x, y, true, rowsAsCells(folds, 2, 2), 8)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -111,8 +111,68 @@ func TestWorkersAndShapes(t *testing.T) {
 	if got := a.Total.Cross(0, 2); got != (doubledouble.Number{Hi: -5}) {
 		t.Errorf("cross-product %v, want -5", got)
 	}
-	if _, err := Reduce([]Column{{Hi: []float64{1}}}, y, true, nil, nil, 1); err == nil {
+	if _, err := Reduce([]Column{{Hi: []float64{1}}}, y, true, Split{}, 1); err == nil {
 		t.Error("columns of unequal length were accepted")
+	}
+}
+
+// rowsAsCells makes every row a cell of its own.
+func rowsAsCells(folds [][]int32, counts ...int) Split {
+	s := Split{Cells: len(folds[0]), Fold: folds, Counts: counts}
+	for i := range folds[0] {
+		s.Cell = append(s.Cell, int32(i))
+	}
+	return s
+}
+
+// TestCellsChangeNothing: summing rows into cells first gives the folds that rows give one by one, to the digits of double-double, and the
+// same bits for any number of workers.
+func TestCellsChangeNothing(t *testing.T) {
+	rng := rand.New(rand.NewPCG(8, 9))
+	const n, cells = 400, 20
+	x, y := make([]Column, 3), Column{}
+	s := Split{Cells: cells, Fold: [][]int32{make([]int32, cells), make([]int32, cells)}, Counts: []int{4, 5}}
+	for c := range cells {
+		s.Fold[0][c], s.Fold[1][c] = int32(c%4), int32(c%5)
+	}
+	one := [][]int32{nil, nil}
+	for range n {
+		c := int32(rng.IntN(cells))
+		s.Cell = append(s.Cell, c)
+		for r := range one {
+			one[r] = append(one[r], s.Fold[r][c])
+		}
+		for j := range x {
+			x[j].Hi = append(x[j].Hi, 1e6+rng.NormFloat64())
+		}
+		y.Hi = append(y.Hi, rng.NormFloat64())
+	}
+	a, err := Reduce(x, y, true, s, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	again, _ := Reduce(x, y, true, s, 3)
+	b, err := Reduce(x, y, true, rowsAsCells(one, 4, 5), 2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for r := range a.Parts {
+		for f, m := range a.Parts[r] {
+			if m.N != b.Parts[r][f].N {
+				t.Fatalf("repeat %d fold %d: %d rows, want %d", r, f, m.N, b.Parts[r][f].N)
+			}
+			for i := range 4 {
+				for j := range 4 {
+					if m.Cross(i, j) != again.Parts[r][f].Cross(i, j) {
+						t.Errorf("repeat %d fold %d: the number of workers matters", r, f)
+					}
+					p, q := m.Cross(i, j), b.Parts[r][f].Cross(i, j)
+					if d := p.Sub(q).Float(); math.Abs(d) > 1e-26*(1+math.Abs(p.Hi)) {
+						t.Errorf("repeat %d fold %d entry %d,%d: gap %g", r, f, i, j, d)
+					}
+				}
+			}
+		}
 	}
 }
 
@@ -136,7 +196,7 @@ func BenchmarkReduce(b *testing.B) {
 			}
 			b.ReportAllocs()
 			for b.Loop() {
-				if _, err := Reduce(x, y, true, folds, []int{10}, 1); err != nil {
+				if _, err := Reduce(x, y, true, rowsAsCells(folds, 10), 1); err != nil {
 					b.Fatal(err)
 				}
 			}

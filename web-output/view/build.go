@@ -78,10 +78,10 @@ func buildRun(c *compare.Comparison, study, toolVersion string) Run {
 		f.AssignmentReason = fmt.Sprintf("more than %d rows were used; the seed gives the same folds again", AssignmentLimit)
 		return run
 	}
-	for _, a := range c.Plan.Assignment {
-		row := make([]int, len(a))
-		for i, v := range a {
-			row[i] = int(v)
+	for repeat := range c.Plan.Fold {
+		row := make([]int, c.Design.Rows)
+		for i := range row {
+			row[i] = c.Plan.Of(repeat, i)
 		}
 		f.Assignment = append(f.Assignment, row)
 	}
