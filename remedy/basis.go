@@ -91,10 +91,10 @@ func restrictionTest(f *Final, what string) (Test, bool) {
 	return t, true
 }
 
-// tune cross-validates values on the inner splits: slopes(sample) must return a function from the value's place to its
-// slopes on that sample. It returns each value's mean squared error over all held-out rows and its standard error over the
+// tune cross-validates count values on the inner splits: errors must return each value's sum of squared errors on the held-out rows of a split,
+// everything learned on its training rows. It returns each value's mean squared error over all held-out rows and its standard error over the
 // splits.
-func tune(inner []Split, count int, slopes func(*linear.Sample) func(int) []float64) (mse, sd []float64) {
+func tune(inner []Split, count int, errors func(Split) []float64) (mse, sd []float64) {
 	mse, sd = make([]float64, count), make([]float64, count)
 	if len(inner) == 0 {
 		for i := range mse {
@@ -105,10 +105,8 @@ func tune(inner []Split, count int, slopes func(*linear.Sample) func(int) []floa
 	sum, squares := make([]float64, count), make([]float64, count)
 	rows := 0
 	for _, s := range inner {
-		at := slopes(s.Train)
 		rows += s.Held.N
-		for i := range count {
-			e := s.Held.SSE(at(i))
+		for i, e := range errors(s) {
 			mse[i] += e
 			m := e / float64(s.Held.N)
 			sum[i] += m
@@ -123,6 +121,15 @@ func tune(inner []Split, count int, slopes func(*linear.Sample) func(int) []floa
 		sd[i] = math.Sqrt(v / j)
 	}
 	return mse, sd
+}
+
+// oneByOne evaluates slopes one value at a time.
+func oneByOne(s Split, count int, slopes func(i int) []float64) []float64 {
+	out := make([]float64, count)
+	for i := range out {
+		out[i] = s.Held.SSE(slopes(i))
+	}
+	return out
 }
 
 // smallest returns the place of the smallest value; of equal ones the last when later is set, else the first.

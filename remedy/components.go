@@ -81,6 +81,20 @@ func (c componentFit) path(s *linear.Sample) func(int) []float64 {
 	}
 }
 
+// errors returns the squared error of each number of components on a split.
+func (c componentFit) errors(s Split, count int) []float64 {
+	if len(c.spare) > 0 {
+		return oneByOne(s, count, c.path(s.Train))
+	}
+	sp := s.Train.Spectrum(nil)
+	return s.Held.PathSSE(sp, count, func(m, k int) float64 {
+		if k >= m {
+			return 0
+		}
+		return 1 / sp.Sigma[k]
+	})
+}
+
 // basis holds the spared regressors as they are and count directions over the rotated ones.
 func (c componentFit) basis(s *linear.Sample, sp *linear.Spectrum, count int) (a []float64, m int) {
 	count = min(count, sp.Rank)
@@ -107,7 +121,7 @@ func (c componentFit) learn(t Training) *Fitted {
 		tuning.Values = append(tuning.Values, float64(k))
 	}
 	if !ok || t.Final {
-		tuning.MSE, tuning.MSESD = tune(t.Inner, len(tuning.Values), c.path)
+		tuning.MSE, tuning.MSESD = tune(t.Inner, len(tuning.Values), func(s Split) []float64 { return c.errors(s, len(tuning.Values)) })
 	}
 	if ok {
 		tuning.Chosen = int(fixed)

@@ -86,9 +86,12 @@ func (r ridgeFit) learn(t Training) *Fitted {
 	values, at := r.values()
 	tuning := &Tuning{Parameter: "penalty", Fixed: at >= 0, Values: values}
 	if at < 0 || t.Final {
-		tuning.MSE, tuning.MSESD = tune(t.Inner, len(values), func(s *linear.Sample) func(int) []float64 {
-			sp := s.Spectrum(r.spare)
-			return func(i int) []float64 { return sp.RidgeSlopes(values[i]) }
+		tuning.MSE, tuning.MSESD = tune(t.Inner, len(values), func(s Split) []float64 {
+			sp := s.Train.Spectrum(r.spare)
+			if len(r.spare) == 0 {
+				return s.Held.PathSSE(sp, len(values), func(i, k int) float64 { return sp.Sigma[k] / (sp.Sigma[k]*sp.Sigma[k] + values[i]) })
+			}
+			return oneByOne(s, len(values), func(i int) []float64 { return sp.RidgeSlopes(values[i]) })
 		})
 	}
 	tuning.Chosen = at

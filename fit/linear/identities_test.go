@@ -349,3 +349,35 @@ func TestPooledSpectrumOfDependentDesign(t *testing.T) {
 		}
 	}
 }
+
+// TestPathAgreesWithPlainErrors: the error curve along the directions is that of the slopes one by one, on tame and on thin designs.
+func TestPathAgreesWithPlainErrors(t *testing.T) {
+	for _, common := range []float64{1, 30, 3000} {
+		x, y := random(12, 60, 5, common)
+		fold := make([]int32, 60)
+		for i := range fold {
+			fold[i] = int32(i % 6)
+		}
+		red, err := reduction.Reduce(x, y, true, reduction.Split{Cell: fold, Cells: 6, Fold: [][]int32{{0, 1, 2, 3, 4, 5}}, Counts: []int{6}}, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		train := NewSample(red, red.Total.Minus(red.Parts[0][2]))
+		held := NewHeldOut(red, red.Parts[0][2], train)
+		sp := train.Spectrum(nil)
+		penalties := []float64{0, 1e-8, 1e-4, 0.1, 3, 1e4}
+		got := held.PathSSE(sp, len(penalties), func(i, k int) float64 { return sp.Sigma[k] / (sp.Sigma[k]*sp.Sigma[k] + penalties[i]) })
+		for i, k := range penalties {
+			near(t, "ridge", got[i], held.SSE(sp.RidgeSlopes(k)), 1e-9)
+		}
+		got = held.PathSSE(sp, 6, func(m, k int) float64 {
+			if k >= m {
+				return 0
+			}
+			return 1 / sp.Sigma[k]
+		})
+		for m, v := range got {
+			near(t, "components", v, held.SSE(sp.ComponentSlopes(m)), 1e-9)
+		}
+	}
+}
