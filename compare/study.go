@@ -79,6 +79,28 @@ type FoldSpec struct {
 // DefaultSeed is the seed of a study that names none.
 const DefaultSeed = 20260101
 
+// Columns reports which columns of the data the study needs: those of the equation, of the sample condition and of the folds.
+//
+// It returns a *equation.SyntaxError when the equation or the condition cannot be read.
+func (s *Study) Columns() (need func(name string) bool, err error) {
+	q, err := equation.Parse(s.Equation)
+	if err != nil {
+		return nil, err
+	}
+	names := slices.Clone(s.Folds.Columns)
+	for _, e := range append([]*equation.Expr{q.Dependent}, q.Terms...) {
+		names = append(names, e.Columns()...)
+	}
+	if strings.TrimSpace(s.Rows) != "" {
+		cond, err := equation.ParseCondition(s.Rows)
+		if err != nil {
+			return nil, err
+		}
+		names = append(names, cond.Columns()...)
+	}
+	return func(name string) bool { return slices.Contains(names, name) }, nil
+}
+
 // StudyError says which key of a study does not fit the data, and what would.
 type StudyError struct {
 	Key, Found, Advice string

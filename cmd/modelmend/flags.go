@@ -64,12 +64,19 @@ func (f *studyFlags) load(cmd *cobra.Command, arg string) (*compare.Study, *data
 	if err := f.apply(cmd, study); err != nil {
 		return nil, nil, err
 	}
-	table, err := dataset.ReadFile(path)
+	var need func(name string) bool
+	if given := strings.TrimSpace(study.Equation) != ""; given {
+		var err error
+		if need, err = study.Columns(); err != nil {
+			return nil, nil, classify(err)
+		}
+	}
+	table, err := dataset.ReadColumns(path, need)
 	if err != nil {
 		return nil, nil, err
 	}
 	table.Name = study.Data
-	if strings.TrimSpace(study.Equation) == "" {
+	if need == nil {
 		return nil, nil, &usageError{noEquation(arg, table)}
 	}
 	return study, table, nil

@@ -14,10 +14,17 @@ type reading struct {
 	builders  []*builder
 	table     *Table
 	blanks    int // lines left out
+	firstLine int // of a piece
+	pending   int // blank lines after the last row
 }
 
-// build turns text into a table.
-func build(name, text string) (*Table, error) {
+// build turns text into a table. Columns that need refuses are skipped: their cells are not looked at. need may be nil.
+func build(name, text string, need func(name string) bool) (*Table, error) {
+	return buildIn(name, text, need, pieceBytes)
+}
+
+// buildIn reads a text of more than two pieces piece by piece.
+func buildIn(name, text string, need func(name string) bool, piece int) (*Table, error) {
 	if strings.Trim(text, " \t\r\n") == "" {
 		return nil, &FileError{Path: name, Reason: NoContent, Found: "an empty file", Advice: "give a file with a row of column names and rows of values"}
 	}
@@ -27,8 +34,20 @@ func build(name, text string) (*Table, error) {
 	if err := r.header(s); err != nil {
 		return nil, err
 	}
-	if err := r.rows(s); err != nil {
-		return nil, err
+	for _, b := range r.builders {
+		if need != nil && !need(b.column.Name) {
+			b.column.Kind = Skipped
+		}
+	}
+	if pieces := r.pieces(s.at, s.line, piece); pieces != nil {
+		if err := r.sideBySide(pieces); err != nil {
+			return nil, err
+		}
+	} else {
+		if err := r.rows(s); err != nil {
+			return nil, err
+		}
+		r.second(false)
 	}
 	if r.table.Rows == 0 {
 		return nil, &FileError{Path: name, Reason: HeaderOnly, Found: "column names and no rows", Advice: "add rows of values below the names"}
@@ -37,7 +56,6 @@ func build(name, text string) (*Table, error) {
 	if err != nil {
 		return nil, err
 	}
-	r.secondReading()
 	for _, b := range r.builders {
 		b.finish()
 		r.table.Columns = append(r.table.Columns, b.column)
@@ -109,7 +127,7 @@ func (r *reading) checkNames(names []string, line int) error {
 
 // rows reads the rows after the header.
 func (r *reading) rows(s *splitter) error {
-	pending := 0 // blank lines seen since the last row
+	r.pending = 0
 	for {
 		line, ok, wrong := s.next()
 		if wrong != nil {
@@ -119,11 +137,11 @@ func (r *reading) rows(s *splitter) error {
 			return nil
 		}
 		if s.blank() {
-			pending++
+			r.pending++
 			continue
 		}
-		r.passBlanks(pending, line)
-		pending = 0
+		r.passBlanks(r.pending, line)
+		r.pending = 0
 		if len(s.fields) != len(r.builders) {
 			return r.ragged(line, len(s.fields))
 		}
@@ -177,9 +195,9 @@ func (r *reading) layout(s *splitError) error {
 	return e
 }
 
-// secondReading gathers the codes of the columns where text came after numbers. The text was split once without an
-// error, so the same records come again.
-func (r *reading) secondReading() {
+// second gathers the codes of the columns where text came after numbers. The text was split once without an error, so the same records
+// come again; a piece has no header.
+func (r *reading) second(piece bool) {
 	var which []*builder
 	var fields []int
 	for i, b := range r.builders {
@@ -193,7 +211,7 @@ func (r *reading) secondReading() {
 		return
 	}
 	s := newSplitter(r.text, r.delimiter)
-	header := true
+	header := !piece
 	for row := 0; row < r.table.Rows; {
 		s.next()
 		if s.blank() && (header || len(r.builders) > 1) {

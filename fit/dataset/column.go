@@ -4,6 +4,8 @@ import (
 	"math"
 	"slices"
 	"strings"
+
+	"modelmend/fit/doubledouble"
 )
 
 // spotted is a cell worth a message.
@@ -38,6 +40,13 @@ type builder struct {
 }
 
 func (b *builder) add(c cell, line int) {
+	if b.column.Kind == Skipped {
+		return
+	}
+	if b.plain(c.text, line) {
+		b.rows++
+		return
+	}
 	if mark, missing := missingMark(c.text); missing {
 		b.column.Missing++
 		if b.column.MissingAs == nil {
@@ -51,6 +60,45 @@ func (b *builder) add(c cell, line int) {
 	}
 	b.value(c.text, line)
 	b.rows++
+}
+
+// plain stores a cell of digits with or without a point, the form of nearly every number, in one look; it reports false for any other.
+func (b *builder) plain(s string, line int) bool {
+	if len(s) == 0 || len(s) > 17 || b.index != nil {
+		return false
+	}
+	first := 0
+	if s[0] == '-' || s[0] == '+' {
+		first = 1
+	}
+	point := -1
+	for i := first; i < len(s); i++ {
+		if s[i] == '.' && point < 0 {
+			point = i
+		} else if s[i] < '0' || s[i] > '9' {
+			return false
+		}
+	}
+	shape := shape{form: wholeForm}
+	before := len(s) - first
+	if point >= 0 {
+		shape.form = pointForm
+		before = point - first
+		shape.decimals = len(s) - point - 1
+		shape.groupsLike = shape.decimals == 3 && before >= 1 && before <= 3 && s[first] != '0'
+	}
+	if before+shape.decimals == 0 {
+		return false
+	}
+	shape.short = before <= 3
+	v, err := doubledouble.Parse(s)
+	if err != nil {
+		return false
+	}
+	b.count(s, shape, line)
+	b.makeRoom()
+	b.store(v.Hi, v.Lo)
+	return true
 }
 
 // value stores a cell that is not missing.
@@ -191,6 +239,7 @@ func (b *builder) store(hi, lo float64) {
 func (b *builder) finish() {
 	c := b.column
 	switch {
+	case c.Kind == Skipped:
 	case b.texts > 0:
 		c.Kind = Text
 		c.Decimals = 0

@@ -24,7 +24,10 @@ var otherEndings = []string{".gz", ".zst", ".bz2", ".xz", ".zip", ".xls", ".xlsx
 // It returns a *FileError when the file cannot be opened or is no CSV or TSV file, a *LayoutError when its rows or
 // names are wrong, and a *CellError when a number cannot be read without a guess. Memory is that of the file and of
 // the columns: 8 bytes a number, 16 where decimals need them, 4 bytes and the distinct values for text.
-func ReadFile(path string) (*Table, error) {
+func ReadFile(path string) (*Table, error) { return ReadColumns(path, nil) }
+
+// ReadColumns is ReadFile for the columns that need accepts by name; the others are Skipped. need may be nil.
+func ReadColumns(path string, need func(name string) bool) (*Table, error) {
 	ending := strings.ToLower(filepath.Ext(path))
 	for _, other := range otherEndings {
 		if ending == other {
@@ -44,7 +47,7 @@ func ReadFile(path string) (*Table, error) {
 	if info.IsDir() {
 		return nil, &FileError{Path: path, Reason: Directory, Found: "a folder", Advice: "give the path of a file in it"}
 	}
-	return read(f, path, info.Size())
+	return read(f, path, info.Size(), need)
 }
 
 func openError(path string, err error) error {
@@ -59,10 +62,10 @@ func openError(path string, err error) error {
 
 // Read reads the table that r gives; name stands for the path in messages and in the table. Errors are those of
 // ReadFile.
-func Read(r io.Reader, name string) (*Table, error) { return read(r, name, 0) }
+func Read(r io.Reader, name string) (*Table, error) { return read(r, name, 0, nil) }
 
 // read takes the size of the file where it is known, to make room at once.
-func read(r io.Reader, name string, size int64) (*Table, error) {
+func read(r io.Reader, name string, size int64, need func(name string) bool) (*Table, error) {
 	buffered := bufio.NewReaderSize(r, 1<<16)
 	head, err := buffered.Peek(4096)
 	if err != nil && !errors.Is(err, io.EOF) {
@@ -88,7 +91,7 @@ func read(r io.Reader, name string, size int64) (*Table, error) {
 	if err != nil {
 		return nil, err
 	}
-	t, err := build(name, text)
+	t, err := build(name, text, need)
 	if err != nil {
 		return nil, err
 	}

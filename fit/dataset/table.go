@@ -25,9 +25,10 @@ type Kind int
 
 // The kinds of column.
 const (
-	Number Kind = iota + 1 // numbers, some of them perhaps missing
-	Text                   // text, some of it perhaps missing
-	Empty                  // no value at all
+	Number  Kind = iota + 1 // numbers, some of them perhaps missing
+	Text                    // text, some of it perhaps missing
+	Empty                   // no value at all
+	Skipped                 // not asked for: nothing is known but the name
 )
 
 // Column is one column of a table. A column is Number when every cell that is not missing is a decimal number,

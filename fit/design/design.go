@@ -710,7 +710,7 @@ func (b *builder) notes(d *Design) {
 			}
 		}
 	}
-	if c, ok := b.table.Column("year"); ok && c.Kind == dataset.Number {
+	if c, ok := b.table.Column("year"); ok && (c.Kind == dataset.Number || c.Kind == dataset.Skipped) {
 		d.Notes = append(d.Notes, Note{"folds-ignore-time", "there is a column called year, but no time key: folds ignore time, and a held-out year is predicted from later ones"})
 	}
 }
