@@ -47,7 +47,7 @@ func buildIn(name, text string, need func(name string) bool, piece int) (*Table,
 		if err := r.rows(s); err != nil {
 			return nil, err
 		}
-		r.second(false)
+		r.second(r.again(), false)
 	}
 	if r.table.Rows == 0 {
 		return nil, &FileError{Path: name, Reason: HeaderOnly, Found: "column names and no rows", Advice: "add rows of values below the names"}
@@ -195,20 +195,25 @@ func (r *reading) layout(s *splitError) error {
 	return e
 }
 
-// second gathers the codes of the columns where text came after numbers. The text was split once without an error, so the same records
-// come again; a piece has no header.
-func (r *reading) second(piece bool) {
-	var which []*builder
-	var fields []int
+// again lists the columns where text came after numbers: their codes are to be gathered in a second reading.
+func (r *reading) again() (fields []int) {
 	for i, b := range r.builders {
 		if b.again {
-			b.rows = 0
-			b.startCodes()
-			which, fields = append(which, b), append(fields, i)
+			fields = append(fields, i)
 		}
 	}
-	if len(which) == 0 {
+	return fields
+}
+
+// second gathers the codes of the columns in fields. The text was split once without an error, so the same records come again; a piece has no
+// header. It touches no other column.
+func (r *reading) second(fields []int, piece bool) {
+	if len(fields) == 0 {
 		return
+	}
+	for _, f := range fields {
+		r.builders[f].rows = 0
+		r.builders[f].startCodes()
 	}
 	s := newSplitter(r.text, r.delimiter)
 	header := !piece
@@ -221,8 +226,8 @@ func (r *reading) second(piece bool) {
 			header = false
 			continue
 		}
-		for j, b := range which {
-			b.codeAgain(s.fields[fields[j]].text)
+		for _, f := range fields {
+			r.builders[f].codeAgain(s.fields[f].text)
 		}
 		row++
 	}

@@ -174,12 +174,8 @@ func (r *reading) codes(j int) *Column {
 	if b.index != nil && !b.again {
 		return b.column
 	}
-	for _, o := range r.builders {
-		o.again = false
-	}
-	b.again = true
 	b.column.Levels = nil
-	r.second(true)
+	r.second([]int{j}, true)
 	return b.column
 }
 

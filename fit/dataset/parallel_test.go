@@ -31,7 +31,9 @@ func TestPiecesChangeNothing(t *testing.T) {
 	cells := []func() string{
 		func() string { return fmt.Sprintf("%.3f", rng.NormFloat64()) },
 		func() string { return fmt.Sprint(rng.IntN(1000)) },
-		func() string { return []string{"", "NA", ".", "1e5", "-0", "+3", "12345678901234567890", "0.1234567890123456789"}[rng.IntN(8)] },
+		func() string {
+			return []string{"", "NA", ".", "1e5", "-0", "+3", "12345678901234567890", "0.1234567890123456789"}[rng.IntN(8)]
+		},
 		func() string { return []string{"north", "south", "3", "NaN", "a b"}[rng.IntN(5)] },
 		func() string {
 			if rng.IntN(200) == 0 {

@@ -82,6 +82,7 @@ type Table struct {
 	DecimalComma bool     // at least one column was read with a decimal comma
 	Hash         string   // hexadecimal SHA-256 of the bytes of the file
 	Notes        []string // what was decided in reading that the user may want to know
+	stream       *stream  // nil where the rows are held
 }
 
 // Column returns the column of a name, matched exactly, and whether there is one.

@@ -1,0 +1,184 @@
+package dataset
+
+import (
+	"errors"
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+	"testing"
+)
+
+func file(t *testing.T, text string) string {
+	t.Helper()
+	path := filepath.Join(t.TempDir(), "t.csv")
+	if err := os.WriteFile(path, []byte(text), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	return path
+}
+
+// gathered joins the pieces of a pass.
+func gathered(t *testing.T, tb *Table) [][]string {
+	t.Helper()
+	var out [][]string
+	pass := func() error {
+		out = nil
+		return tb.Each(func(p *Table) error {
+			for i := range p.Rows {
+				row := []string{fmt.Sprint(p.Lines[i])}
+				for _, c := range p.Columns {
+					row = append(row, shownCell(c, i))
+				}
+				out = append(out, row)
+			}
+			return nil
+		})
+	}
+	err := pass()
+	if errors.Is(err, ErrKinds) {
+		if err = tb.Survey(); err == nil {
+			err = pass()
+		}
+	}
+	if err != nil {
+		t.Fatal(err)
+	}
+	return out
+}
+
+func shownCell(c *Column, i int) string {
+	switch c.Kind {
+	case Number:
+		v := c.Value(i)
+		return fmt.Sprintf("%v %v", v.Hi, v.Lo)
+	case Text:
+		if c.Codes[i] < 0 {
+			return "missing"
+		}
+		return c.Levels[c.Codes[i]]
+	}
+	return "nothing"
+}
+
+// TestStreamedIsWhole: a table read piece by piece gives the rows of the table read whole, with the same kinds, levels and hash.
+func TestStreamedIsWhole(t *testing.T) {
+	rng := rand.New(rand.NewPCG(41, 42))
+	for round := range 40 {
+		end := []string{"\n", "\r\n"}[round%2]
+		var b strings.Builder
+		if round%3 == 0 {
+			b.WriteString(bomUTF8)
+		}
+		b.WriteString("a,b,c,d,e" + end)
+		late := round%4 == 0 // a column of numbers turns out to be text
+		for i := range 150 {
+			c := fmt.Sprint(rng.IntN(50))
+			if late && i > 100 && rng.IntN(9) == 0 {
+				c = "late"
+			}
+			d := []string{"north", "south", "NA", "7"}[rng.IntN(4)]
+			if round%5 == 0 {
+				d = []string{`"x, y"`, `"line` + end + `break"`, `"say ""hi"""`, "plain", `5" pipe`}[rng.IntN(5)]
+			}
+			gap := ""
+			if i > 75 {
+				gap = "1.5"
+			}
+			fmt.Fprintf(&b, "%.4f,%s,%s,%s,%s%s", rng.NormFloat64(), []string{"", "0.1", "NA", "1e3"}[rng.IntN(4)], c, d, gap, end)
+		}
+		text := b.String()
+		path := file(t, text)
+		whole, err := ReadFile(path)
+		if err != nil {
+			t.Fatal(err)
+		}
+		tb, err := openIn(path, nil, 400+rng.IntN(900))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !tb.Streamed() {
+			t.Fatalf("round %d was read whole", round)
+		}
+		if err := tb.Survey(); err != nil {
+			t.Fatal(err)
+		}
+		got := gathered(t, tb)
+		if len(got) != whole.Rows || tb.Rows != whole.Rows || tb.Hash != whole.Hash {
+			t.Fatalf("round %d: %d rows, want %d; hash %s, want %s", round, len(got), whole.Rows, tb.Hash, whole.Hash)
+		}
+		for j, c := range whole.Columns {
+			s := tb.Columns[j]
+			if s.Kind != c.Kind || !slices.Equal(s.Levels, c.Levels) || s.Missing != c.Missing || s.Decimals != c.Decimals || s.FirstStray != c.FirstStray || s.FirstStrayLine != c.FirstStrayLine {
+				t.Errorf("round %d: column %+v, want %+v", round, s, c)
+			}
+			for i := range whole.Rows {
+				if got[i][j+1] != shownCell(c, i) || got[i][0] != fmt.Sprint(whole.Lines[i]) {
+					t.Fatalf("round %d, row %d, column %s: %q in line %s, want %q in line %d", round, i, c.Name, got[i][j+1], got[i][0], shownCell(c, i), whole.Lines[i])
+				}
+			}
+		}
+	}
+}
+
+// TestStreamWithoutSurvey: numbers alone need one pass.
+func TestStreamWithoutSurvey(t *testing.T) {
+	var b strings.Builder
+	b.WriteString("a,b\n")
+	for i := range 300 {
+		fmt.Fprintf(&b, "%d,%d.25\n", i, i)
+	}
+	tb, err := openIn(file(t, b.String()), func(n string) bool { return n == "b" }, 300)
+	if err != nil {
+		t.Fatal(err)
+	}
+	sum := 0.0
+	if err := tb.Each(func(p *Table) error {
+		if p.Columns[0].Kind != Skipped || p.Columns[0].Hi != nil {
+			t.Fatal("a column that was not asked for was read")
+		}
+		for _, v := range p.Columns[1].Hi {
+			sum += v
+		}
+		return nil
+	}); err != nil {
+		t.Fatal(err)
+	}
+	if want := 300*299/2 + 75.0; math.Abs(sum-want) > 1e-9 || tb.Rows != 300 || tb.Columns[1].Decimals != 2 {
+		t.Errorf("sum %v, want %v; %d rows, %d decimals", sum, want, tb.Rows, tb.Columns[1].Decimals)
+	}
+}
+
+// TestStreamErrors: what is wrong far down is found, a pass can be ended early, and what cannot be cut says so.
+func TestStreamErrors(t *testing.T) {
+	good := "a,b\n" + strings.Repeat("1,2\n", 500)
+	for name, text := range map[string]string{"ragged": good + "1,2,3\n" + good[4:], "latin": good + "1,\xe9\n", "nul": good + "1,\x00\n", "lone return": good + "1,2\r3,4\n"} {
+		tb, err := openIn(file(t, text), nil, 200)
+		if err != nil {
+			t.Fatal(err)
+		}
+		err = tb.Each(func(*Table) error { return nil })
+		if err == nil {
+			t.Errorf("%s: no error", name)
+		}
+		if name == "ragged" {
+			var l *LayoutError
+			if !errors.As(err, &l) || l.Line != 502 {
+				t.Errorf("ragged: %v", err)
+			}
+		} else if !CannotCut(err) {
+			t.Errorf("%s: %v, want a file that cannot be cut", name, err)
+		}
+	}
+	tb, err := openIn(file(t, good), nil, 200)
+	if err != nil {
+		t.Fatal(err)
+	}
+	enough := errors.New("enough")
+	if err := tb.Each(func(*Table) error { return enough }); err != enough {
+		t.Errorf("an early end gives %v", err)
+	}
+}
