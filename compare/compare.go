@@ -150,7 +150,7 @@ func (c *Comparison) labels(column string) ([]string, error) {
 
 func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, opt Options) {
 	d := c.Design
-	in := collinear.Input{Names: d.Names(), Sample: sample, Raw: linear.NewRawSample(red, red.Total), Columns: d.Columns(), Lines: d.Lines, Cutoffs: c.Study.Cutoffs}
+	in := collinear.Input{Names: d.Names(), Sample: sample, Raw: linear.NewRawSample(red, red.Total), Each: d.Each, Cutoffs: c.Study.Cutoffs}
 	for _, r := range d.Regressors {
 		in.Decimals = append(in.Decimals, r.Decimals)
 	}

@@ -49,10 +49,10 @@ type Input struct {
 	// CenteredRaw is Raw for the centred columns; nil: same as Raw.
 	CenteredRaw *linear.Sample
 	Groups      []Group // term groups, covering every regressor once
-	Columns     []reduction.Column
-	Decimals    []int // decimals in the data; -1 for computed columns
-	Lines       []int // file line of each row
-	Cutoffs     Cutoffs
+	Decimals    []int   // decimals in the data; -1 for computed columns
+	// Each gives the rows block by block: the regressors and the file line of each row. It may be called several times.
+	Each    func(yield func(cols []reduction.Column, lines []int) error) error
+	Cutoffs Cutoffs
 }
 
 // Group is a set of columns that belong together.

@@ -37,7 +37,7 @@ func diagnose(t *testing.T, table *dataset.Table, eq string, opt design.Options)
 		}
 		return linear.NewSample(red, red.Total), linear.NewRawSample(red, red.Total)
 	}
-	in := collinear.Input{Names: d.Names(), Columns: d.Columns(), Lines: d.Lines, Cutoffs: collinear.DefaultCutoffs()}
+	in := collinear.Input{Names: d.Names(), Each: d.Each, Cutoffs: collinear.DefaultCutoffs()}
 	in.Sample, in.Raw = reduce(d.Columns())
 	if cols, differ := d.Centered(); differ && d.Constant {
 		in.Centered, in.CenteredRaw = reduce(cols)

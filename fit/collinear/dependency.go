@@ -1,6 +1,7 @@
 package collinear
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"sort"
@@ -10,6 +11,7 @@ import (
 	"modelmend/fit/doubledouble"
 	"modelmend/fit/figures"
 	"modelmend/fit/linear"
+	"modelmend/fit/reduction"
 )
 
 // exactDependencies writes each exact dependency as an equation, in simple numbers where the data allow.
@@ -262,57 +264,89 @@ func simplify(in Input, r *Report, d Dependency) (Dependency, bool) {
 		}
 		decimals = max(decimals, in.Decimals[j])
 	}
-	rest, size := remainders(in, d)
+	head, size := start(in, d, computed)
+	tolerance := 0.5 * math.Pow10(-decimals) * (1 - 1e-9)
 	if computed {
 		// Computed columns have no decimals of their own: only rounding in the last place is allowed.
-		d.Constant = median(rest)
-		return count(in, d, rest, 1e-11*size)
+		d.Constant, tolerance = median(head), 1e-11*size
+	} else {
+		d.Constant = roundTo(median(head), decimals)
 	}
-	d.Constant = roundTo(median(rest), decimals)
-	return count(in, d, rest, 0.5*math.Pow10(-decimals)*(1-1e-9))
-}
-
-func count(in Input, d Dependency, rest []float64, tolerance float64) (Dependency, bool) {
-	d.RowsHolding, d.Exceptions = 0, nil
-	for i, v := range rest {
+	holding := 0
+	for _, v := range head {
 		if math.Abs(v-d.Constant) <= tolerance {
-			d.RowsHolding++
-		} else if len(d.Exceptions) < 10 && i < len(in.Lines) {
-			d.Exceptions = append(d.Exceptions, in.Lines[i])
+			holding++
 		}
 	}
-	d.RowsUsed = len(rest)
-	d.Simple = float64(d.RowsHolding) >= 0.95*float64(len(rest))
+	if float64(holding) < 0.9*float64(len(head)) {
+		return d, false // no use looking at all rows
+	}
+	return count(in, d, tolerance)
+}
+
+// headRows is how many rows the constant of a simple relation is taken from.
+const headRows = 4000
+
+// errEnough ends a pass early.
+var errEnough = errors.New("enough rows")
+
+// start returns the remainders of the first rows and, when all is set, the largest size of what is added up in any row.
+func start(in Input, d Dependency, all bool) (head []float64, size float64) {
+	in.Each(func(cols []reduction.Column, _ []int) error {
+		for i := range cols[d.Left].Hi {
+			v, s := remainder(cols, d, i)
+			size = math.Max(size, s)
+			if len(head) < headRows {
+				head = append(head, v)
+			} else if !all {
+				return errEnough
+			}
+		}
+		return nil
+	})
+	return head, size
+}
+
+// count looks at every row.
+func count(in Input, d Dependency, tolerance float64) (Dependency, bool) {
+	d.RowsHolding, d.RowsUsed, d.Exceptions = 0, 0, nil
+	err := in.Each(func(cols []reduction.Column, lines []int) error {
+		for i := range cols[d.Left].Hi {
+			v, _ := remainder(cols, d, i)
+			d.RowsUsed++
+			if math.Abs(v-d.Constant) <= tolerance {
+				d.RowsHolding++
+			} else if len(d.Exceptions) < 10 {
+				d.Exceptions = append(d.Exceptions, lines[i])
+			}
+		}
+		return nil
+	})
+	d.Simple = err == nil && float64(d.RowsHolding) >= 0.95*float64(d.RowsUsed)
 	if !d.Simple {
-		d.RowsHolding, d.Exceptions = 0, nil
+		d.RowsHolding, d.RowsUsed, d.Exceptions = 0, in.Sample.N, nil
 	}
 	return d, d.Simple
 }
 
-// remainders returns x_left - sum c*x row by row, and the largest size of what is added up.
-func remainders(in Input, d Dependency) (rest []float64, size float64) {
-	value := func(j, row int) doubledouble.Number {
-		c := in.Columns[j]
-		v := doubledouble.From(c.Hi[row])
-		if c.Lo != nil {
-			v.Lo = c.Lo[row]
+// remainder returns x_left - sum c*x in one row, and the largest size of what is added up.
+func remainder(cols []reduction.Column, d Dependency, row int) (rest, size float64) {
+	value := func(j int) doubledouble.Number {
+		v := doubledouble.From(cols[j].Hi[row])
+		if cols[j].Lo != nil {
+			v.Lo = cols[j].Lo[row]
 		}
 		return v
 	}
-	n := len(in.Columns[d.Left].Hi)
-	rest = make([]float64, n)
-	for i := range n {
-		v := value(d.Left, i)
-		size = math.Max(size, math.Abs(v.Hi))
-		for k, j := range d.Columns {
-			// 0.1 and its multiples are meant as decimals.
-			t := value(j, i).Mul(decimalNumber(d.Coefficients[k]))
-			size = math.Max(size, math.Abs(t.Hi))
-			v = v.Sub(t)
-		}
-		rest[i] = v.Float()
+	v := value(d.Left)
+	size = math.Abs(v.Hi)
+	for k, j := range d.Columns {
+		// 0.1 and its multiples are meant as decimals.
+		t := value(j).Mul(decimalNumber(d.Coefficients[k]))
+		size = math.Max(size, math.Abs(t.Hi))
+		v = v.Sub(t)
 	}
-	return rest, size
+	return v.Float(), size
 }
 
 func decimalNumber(c float64) doubledouble.Number {

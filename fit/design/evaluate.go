@@ -309,6 +309,11 @@ func (d *Design) Columns() []reduction.Column {
 	return out
 }
 
+// Each gives the used rows block by block: the regressors and the file line of each row.
+func (d *Design) Each(yield func(cols []reduction.Column, lines []int) error) error {
+	return yield(d.Columns(), d.Lines)
+}
+
 // Names returns the names of the regressors.
 func (d *Design) Names() []string {
 	out := make([]string, len(d.Regressors))

@@ -41,8 +41,11 @@ const Exact = 10000
 // Groups is the number of cells of a large random split.
 const Groups = 1000
 
-// block is the number of rows that are dealt into cells together: each block gives every cell the same number of rows.
-const block = 4 * Groups
+// Block is the number of rows that are dealt into cells together: each block gives every cell the same number of rows.
+const Block = 4 * Groups
+
+// MostFolds is the number of folds up to which a large split is dealt in cells.
+const MostFolds = Groups / 2
 
 // NewRandom splits n rows into count balanced folds, repeats times. The same n, count, repeats and seed give the same plan;
 // fold sizes differ by at most one a chunk.
@@ -59,25 +62,47 @@ func NewRandom(n, count, repeats int, seed int64) (*Plan, error) {
 		return nil, fmt.Errorf("folds: %d rows cannot fill %d folds; ask for at most %d", n, count, n)
 	}
 	p := &Plan{Kind: Random, Count: count, Repeats: repeats, Cells: n, Cell: make([]int32, n)}
-	if n > Exact && count <= Groups/2 {
+	if n > Exact && count <= MostFolds {
 		p.Cells = Groups
-		rng := rand.New(rand.NewPCG(uint64(seed), 0xce11))
-		for start := 0; start < n; start += block {
-			deal(p.Cell[start:min(start+block, n)], Groups, rng)
+		d := NewDealer(seed)
+		for start := 0; start < n; start += Block {
+			d.Deal(p.Cell[start:min(start+Block, n)])
 		}
 	} else {
 		for i := range p.Cell {
 			p.Cell[i] = int32(i)
 		}
 	}
-	for r := range repeats {
-		fold := make([]int32, p.Cells)
-		deal(fold, count, rand.New(rand.NewPCG(uint64(seed), 0xf01d5<<16|uint64(r))))
-		p.Fold = append(p.Fold, fold)
-		p.Counts = append(p.Counts, count)
-	}
+	p.draw(seed)
 	return p, nil
 }
+
+// NewDealt is the plan of NewRandom for rows that a Dealer has dealt into cells; Cell is left empty.
+func NewDealt(count, repeats int, seed int64) *Plan {
+	p := &Plan{Kind: Random, Count: count, Repeats: repeats, Cells: Groups}
+	p.draw(seed)
+	return p
+}
+
+func (p *Plan) draw(seed int64) {
+	for r := range p.Repeats {
+		fold := make([]int32, p.Cells)
+		deal(fold, p.Count, rand.New(rand.NewPCG(uint64(seed), 0xf01d5<<16|uint64(r))))
+		p.Fold = append(p.Fold, fold)
+		p.Counts = append(p.Counts, p.Count)
+	}
+}
+
+// Dealer deals rows into the cells of a large random split, Block rows at a time.
+type Dealer struct{ rng *rand.Rand }
+
+// NewDealer starts at the first row.
+func NewDealer(seed int64) *Dealer {
+	return &Dealer{rand.New(rand.NewPCG(uint64(seed), 0xce11))}
+}
+
+// Deal gives the next rows their cells: Block of them, fewer only at the end of the table.
+func (d *Dealer) Deal(cell []int32) { deal(cell, Groups, d.rng) }
 
 // deal gives each place one of so many hands, as evenly as the number of places allows, in random order.
 func deal(places []int32, hands int, rng *rand.Rand) {

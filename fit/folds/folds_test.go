@@ -20,7 +20,7 @@ func TestRandomIsBalancedSeededAndDiffersByRepeat(t *testing.T) {
 			for f, s := range sizes {
 				slack := 1.0
 				if n > Exact { // cells may differ by one row a block
-					slack = 100 * math.Ceil(float64(n)/block)
+					slack = 100 * math.Ceil(float64(n)/Block)
 				}
 				if want := float64(n) / 10; math.Abs(float64(s)-want) > slack {
 					t.Errorf("n=%d repeat %d fold %d holds %d rows, want about %v", n, r, f, s, want)

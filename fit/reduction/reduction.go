@@ -201,7 +201,16 @@ func sums(cols []Column, origin []doubledouble.Number, of []int32, parts, worker
 	for f := range out {
 		out[f] = NewMoments(len(cols))
 	}
-	workers = min(workers, parts)
+	share(cols, origin, of, out, workers)
+	for _, m := range out {
+		m.settle()
+	}
+	return out
+}
+
+// share adds rows to the moments of their parts, every workers-th part in one worker.
+func share(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, workers int) {
+	workers = max(1, min(workers, len(out)))
 	var wg sync.WaitGroup
 	for w := range workers {
 		wg.Add(1)
@@ -211,13 +220,12 @@ func sums(cols []Column, origin []doubledouble.Number, of []int32, parts, worker
 		}()
 	}
 	wg.Wait()
-	return out
 }
 
-func sumShare(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, share, shares int) {
+func sumShare(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, mine, shares int) {
 	hi, lo := make([]float64, len(cols)), make([]float64, len(cols))
 	for row, f := range of {
-		if int(f)%shares != share {
+		if int(f)%shares != mine {
 			continue
 		}
 		for j, c := range cols {
@@ -229,7 +237,85 @@ func sumShare(cols []Column, origin []doubledouble.Number, of []int32, out []*Mo
 		}
 		out[f].add(hi, lo)
 	}
-	for f := share; f < len(out); f += shares {
-		out[f].settle()
+}
+
+// Accumulator gathers rows block by block, for tables that are not held in memory.
+type Accumulator struct {
+	red   *Reduction
+	cells []*Moments
+	begun bool
+}
+
+// NewAccumulator makes room for p regressors and the dependent variable in so many cells.
+func NewAccumulator(p int, constant bool, cells int) *Accumulator {
+	a := &Accumulator{red: &Reduction{P: p, Constant: constant, Origin: make([]doubledouble.Number, p+1)}}
+	for range cells {
+		a.cells = append(a.cells, NewMoments(p+1))
 	}
+	return a
+}
+
+// Add takes the next rows: the p regressors and the dependent variable last, row i in cell[i]. The first row of all serves as origin. The sums are
+// those of Reduce, bit for bit, whatever the blocks and the number of workers. Cost O(n q^2).
+func (a *Accumulator) Add(cols []Column, cell []int32, workers int) {
+	if len(cell) == 0 {
+		return
+	}
+	if a.red.Constant && !a.begun {
+		for j, c := range cols {
+			a.red.Origin[j] = doubledouble.From(c.Hi[0])
+		}
+	}
+	a.begun = true
+	share(cols, a.red.Origin, cell, a.cells, workers)
+}
+
+// Finish gathers the cells into the folds of every repeat; without folds it gives the total alone. The accumulator is spent.
+func (a *Accumulator) Finish(fold [][]int32, counts []int) *Reduction {
+	for _, m := range a.cells {
+		m.settle()
+	}
+	if len(fold) == 0 {
+		a.red.Total = gather(a.cells, make([]int32, len(a.cells)), 1)[0]
+		return a.red
+	}
+	for r, f := range fold {
+		a.red.Parts = append(a.red.Parts, gather(a.cells, f, counts[r]))
+	}
+	a.red.Total = a.red.Parts[0][0]
+	for _, part := range a.red.Parts[0][1:] {
+		a.red.Total = a.red.Total.Plus(part)
+	}
+	return a.red
+}
+
+// Keep returns the reduction of the regressors in cols alone.
+func (r *Reduction) Keep(cols []int) *Reduction {
+	out := &Reduction{P: len(cols), Constant: r.Constant}
+	all := append(append([]int{}, cols...), r.P)
+	for _, c := range all {
+		out.Origin = append(out.Origin, r.Origin[c])
+	}
+	out.Total = r.Total.keep(all)
+	for _, parts := range r.Parts {
+		var kept []*Moments
+		for _, m := range parts {
+			kept = append(kept, m.keep(all))
+		}
+		out.Parts = append(out.Parts, kept)
+	}
+	return out
+}
+
+func (m *Moments) keep(cols []int) *Moments {
+	out := NewMoments(len(cols))
+	out.N = m.N
+	for i, a := range cols {
+		out.sumHi[i], out.sumLo[i] = m.sumHi[a], m.sumLo[a]
+		for j := i; j < len(cols); j++ {
+			from, to := m.at(a, cols[j]), out.at(i, j)
+			out.crossHi[to], out.crossLo[to] = m.crossHi[from], m.crossLo[from]
+		}
+	}
+	return out
 }
