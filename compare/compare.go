@@ -2,6 +2,7 @@ package compare
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"runtime"
@@ -34,7 +35,8 @@ type Comparison struct {
 	Design        *design.Design
 	Plan          *folds.Plan // nil after Check
 	Diagnosis     *collinear.Report
-	Digits        float64 // vouched for
+	Digits        float64   // vouched for
+	Means         []float64 // of the regressors over the rows used
 	Problem       *remedy.Problem
 	Focal         []int // declared, or the most tangled regressor
 	FocalDeclared bool
@@ -95,33 +97,55 @@ func prepare(ctx context.Context, t *dataset.Table, study *Study, opt Options, f
 			return nil, nil, err
 		}
 	}
-	if c.Design, err = design.Build(t, c.Equation, design.Options{NoConstant: study.NoConstant, Rows: cond, ShowSmallCells: study.ShowSmallCells}); err != nil {
-		return nil, nil, err
-	}
-	c.Notes = append(c.Notes, c.Design.Notes...)
-	var split reduction.Split
-	if folded {
-		if c.Plan, err = plan(c.Design, study, c.labels); err != nil {
-			return nil, nil, err
-		}
-		split = reduction.Split{Cell: c.Plan.Cell, Cells: c.Plan.Cells, Fold: c.Plan.Fold, Counts: c.Plan.Counts}
-	}
-	if err := ctx.Err(); err != nil {
-		return nil, nil, err
-	}
-	d := c.Design
-	red, err := reduction.Reduce(d.Columns(), d.Y, d.Constant, split, opt.Workers)
+	red, err := c.reduce(ctx, opt, design.Options{NoConstant: study.NoConstant, Rows: cond, ShowSmallCells: study.ShowSmallCells}, folded)
 	if err != nil {
 		return nil, nil, err
 	}
+	c.Notes = append(c.Notes, c.Design.Notes...)
+	for j := range c.Design.Regressors {
+		n := float64(red.Total.N)
+		c.Means = append(c.Means, red.Total.Sum(j).Add(red.Origin[j].MulFloat(n)).Float()/n)
+	}
 	sample := linear.NewSample(red, red.Total)
-	c.diagnose(red, sample, opt)
+	if err := c.diagnose(red, sample, opt); err != nil {
+		return nil, nil, err
+	}
 	if err := c.problem(sample); err != nil {
 		return nil, nil, err
 	}
 	c.fitAsIs(sample)
 	c.ledger()
 	return c, red, nil
+}
+
+// reduce forms the design and its cross-products, from memory or in passes over the file.
+func (c *Comparison) reduce(ctx context.Context, opt Options, set design.Options, folded bool) (red *reduction.Reduction, err error) {
+	if c.Table, err = held(c.Table, c.Study); err != nil {
+		return nil, err
+	}
+	if c.Table.Streamed() {
+		red, err = c.reduceStream(ctx, opt, set, folded)
+		if !errors.Is(err, errFew) && !errors.Is(err, design.ErrWhole) && !dataset.CannotCut(err) {
+			return red, err
+		}
+		if c.Table, err = c.Table.Whole(); err != nil {
+			return nil, err
+		}
+	}
+	if c.Design, err = design.Build(c.Table, c.Equation, set); err != nil {
+		return nil, err
+	}
+	var split reduction.Split
+	if folded {
+		if c.Plan, err = plan(c.Design, c.Study, c.labels); err != nil {
+			return nil, err
+		}
+		split = reduction.Split{Cell: c.Plan.Cell, Cells: c.Plan.Cells, Fold: c.Plan.Fold, Counts: c.Plan.Counts}
+	}
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
+	return reduction.Reduce(c.Design.Columns(), c.Design.Y, c.Design.Constant, split, opt.Workers)
 }
 
 // labels gives the values of a fold column as text, for the rows used.
@@ -148,7 +172,7 @@ func (c *Comparison) labels(column string) ([]string, error) {
 	return out, nil
 }
 
-func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, opt Options) {
+func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, opt Options) error {
 	d := c.Design
 	in := collinear.Input{Names: d.Names(), Sample: sample, Raw: linear.NewRawSample(red, red.Total), Each: d.Each, Cutoffs: c.Study.Cutoffs}
 	for _, r := range d.Regressors {
@@ -157,11 +181,13 @@ func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, o
 	for _, t := range d.Terms {
 		in.Groups = append(in.Groups, collinear.Group{Name: t.Name, Columns: t.Columns, Category: t.Category, Products: t.Products})
 	}
-	if cols, differ := d.Centered(); differ && d.Constant {
-		if cr, err := reduction.Reduce(cols, d.Y, d.Constant, reduction.Split{}, opt.Workers); err == nil {
-			in.Centered = linear.NewSample(cr, cr.Total)
-			in.CenteredRaw = linear.NewRawSample(cr, cr.Total)
-		}
+	cr, err := c.centered(opt)
+	if err != nil {
+		return err
+	}
+	if cr != nil {
+		in.Centered = linear.NewSample(cr, cr.Total)
+		in.CenteredRaw = linear.NewRawSample(cr, cr.Total)
 	}
 	c.Diagnosis = collinear.Diagnose(in)
 	largest := 1.0
@@ -171,6 +197,7 @@ func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, o
 		}
 	}
 	c.Digits = linear.VouchedDigits(largest)
+	return nil
 }
 
 func (c *Comparison) problem(sample *linear.Sample) error {
@@ -216,14 +243,8 @@ func (c *Comparison) problem(sample *linear.Sample) error {
 		return err
 	}
 	pr.Penalties = penalties(sample)
-	pr.Rows = func(yield func(x []float64, y float64)) {
-		x := make([]float64, p)
-		for i := range d.Rows {
-			for j := range x {
-				x[j] = d.Regressors[j].Values.Hi[i]
-			}
-			yield(x, d.Y.Hi[i])
-		}
+	if !d.Streamed() {
+		pr.Rows = c.rows
 	}
 	c.Problem = pr
 	c.Focal, c.FocalDeclared = focal, len(focal) > 0
@@ -232,6 +253,18 @@ func (c *Comparison) problem(sample *linear.Sample) error {
 		c.Notes = append(c.Notes, design.Note{Code: "no-focal", Text: fmt.Sprintf("no coefficient of interest was named; the verdict speaks of %s, the most entangled one: name yours with focal", d.Regressors[c.Focal[0]].Name)})
 	}
 	return nil
+}
+
+// rows gives the regressors and the dependent variable row by row.
+func (c *Comparison) rows(yield func(x []float64, y float64)) {
+	d := c.Design
+	x := make([]float64, len(d.Regressors))
+	for i := range d.Rows {
+		for j := range x {
+			x[j] = d.Regressors[j].Values.Hi[i]
+		}
+		yield(x, d.Y.Hi[i])
+	}
 }
 
 // mostTangled is the regressor with the highest factor after centring; exact dependencies come first.

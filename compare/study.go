@@ -209,24 +209,35 @@ func settings(d *design.Design, list []RemedySetting) (remedy.Settings, map[stri
 	return out, off, nil
 }
 
-// plan draws the folds.
-func plan(d *design.Design, study *Study, label func(column string) ([]string, error)) (*folds.Plan, error) {
-	spec := study.Folds
-	count, repeats := spec.Count, spec.Repeats
+// mostCelled is the number of regressors up to which the rows of a large table are gathered in cells: beyond, a thousand sets of
+// cross-products would take more memory than they save work.
+const mostCelled = 150
+
+// numbers returns folds and repeats, 10 and 5 where none are named.
+func (f FoldSpec) numbers() (count, repeats int) {
+	count, repeats = f.Count, f.Repeats
 	if count == 0 {
 		count = 10
 	}
 	if repeats == 0 {
 		repeats = 5
 	}
+	return count, repeats
+}
+
+// plan draws the folds.
+func plan(d *design.Design, study *Study, label func(column string) ([]string, error)) (*folds.Plan, error) {
+	spec := study.Folds
+	count, repeats := spec.numbers()
+	celled := len(d.Regressors) <= mostCelled
 	switch spec.Kind {
 	case "":
 		if d.Rows < 30 && spec.Count == 0 {
 			return folds.NewLeaveOneOut(d.Rows)
 		}
-		return folds.NewRandom(d.Rows, count, repeats, study.Seed)
+		return folds.NewRandom(d.Rows, count, repeats, study.Seed, celled)
 	case "random":
-		return folds.NewRandom(d.Rows, count, repeats, study.Seed)
+		return folds.NewRandom(d.Rows, count, repeats, study.Seed, celled)
 	case "leave-one-out":
 		if d.Rows > 5000 {
 			return nil, &StudyError{"folds", fmt.Sprintf("leave-one-out with %d rows would learn every tuning %d times", d.Rows, d.Rows), "use kind: random"}

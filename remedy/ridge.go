@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"modelmend/fit/folds"
 	"modelmend/fit/linear"
 )
 
@@ -195,7 +196,7 @@ func (r ridgeFit) candidates(f *Final) []Candidate {
 		return s.RSS(r.slopes(s, sp, k)) / n / (e * e)
 	}
 	out = append(out, Candidate{"generalized-cross-validation", "smallest generalised cross-validation (Golub, Heath and Wahba 1979), the whole range scanned", refine(t.Values, gcv)})
-	if p.Rows != nil && s.N <= 20000 {
+	if p.Rows != nil && s.N <= folds.Exact {
 		if k, ok := r.leaveOneOut(sp); ok {
 			out = append(out, Candidate{"leave-one-out", "smallest leave-one-out error, the scaling held at that of all rows", k})
 		}

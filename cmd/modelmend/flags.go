@@ -71,7 +71,7 @@ func (f *studyFlags) load(cmd *cobra.Command, arg string) (*compare.Study, *data
 			return nil, nil, classify(err)
 		}
 	}
-	table, err := dataset.ReadColumns(path, need)
+	table, err := dataset.Open(path, need)
 	if err != nil {
 		return nil, nil, err
 	}

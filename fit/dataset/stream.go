@@ -40,11 +40,11 @@ func Open(path string, need func(name string) bool) (*Table, error) {
 	if err != nil || info.IsDir() || info.Size() < StreamBytes {
 		return ReadColumns(path, need)
 	}
-	return openIn(path, need, pieceBytes)
+	return OpenInPieces(path, need, pieceBytes)
 }
 
-// openIn is Open for any size of file, in pieces of so many bytes.
-func openIn(path string, need func(name string) bool, size int) (*Table, error) {
+// OpenInPieces is Open for a file of any size, in pieces of so many bytes.
+func OpenInPieces(path string, need func(name string) bool, size int) (*Table, error) {
 	t, err := firstPiece(path, need, size)
 	if errors.Is(err, errWhole) {
 		return ReadColumns(path, need)

@@ -96,7 +96,7 @@ func TestStreamedIsWhole(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		tb, err := openIn(path, nil, 400+rng.IntN(900))
+		tb, err := OpenInPieces(path, nil, 400+rng.IntN(900))
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -131,7 +131,7 @@ func TestStreamWithoutSurvey(t *testing.T) {
 	for i := range 300 {
 		fmt.Fprintf(&b, "%d,%d.25\n", i, i)
 	}
-	tb, err := openIn(file(t, b.String()), func(n string) bool { return n == "b" }, 300)
+	tb, err := OpenInPieces(file(t, b.String()), func(n string) bool { return n == "b" }, 300)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -156,7 +156,7 @@ func TestStreamWithoutSurvey(t *testing.T) {
 func TestStreamErrors(t *testing.T) {
 	good := "a,b\n" + strings.Repeat("1,2\n", 500)
 	for name, text := range map[string]string{"ragged": good + "1,2,3\n" + good[4:], "latin": good + "1,\xe9\n", "nul": good + "1,\x00\n", "lone return": good + "1,2\r3,4\n"} {
-		tb, err := openIn(file(t, text), nil, 200)
+		tb, err := OpenInPieces(file(t, text), nil, 200)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -173,7 +173,7 @@ func TestStreamErrors(t *testing.T) {
 			t.Errorf("%s: %v, want a file that cannot be cut", name, err)
 		}
 	}
-	tb, err := openIn(file(t, good), nil, 200)
+	tb, err := OpenInPieces(file(t, good), nil, 200)
 	if err != nil {
 		t.Fatal(err)
 	}

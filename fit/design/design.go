@@ -65,6 +65,7 @@ type SetAside struct {
 	Reason string
 	Column string
 	Count  int
+	order  int // in which reasons are found: the sample, missing values by column, then expressions
 }
 
 // Note is a remark on the data or the equation.
@@ -86,7 +87,7 @@ type Design struct {
 	Notes      []Note
 	atoms      map[string]reduction.Column
 	means      map[string]float64 // of the raw number columns over the used rows
-	exprs      map[string]*equation.Expr
+	source     *source            // nil where the rows are held
 }
 
 // Options are what a study adds to the equation.
@@ -143,8 +144,11 @@ func (e *RefusedError) Error() string {
 	return s
 }
 
-// Build forms the design. Cost O(n p).
+// Build forms the design. Cost O(n p). For a streamed table the rows follow by Pass, and Settle finishes the design.
 func Build(t *dataset.Table, eq *equation.Equation, opt Options) (*Design, error) {
+	if t.Streamed() {
+		return buildStream(t, eq, opt)
+	}
 	b := &builder{table: t, eq: eq, reason: make([]int, t.Rows)}
 	if err := b.checkColumns(); err != nil {
 		return nil, err
@@ -167,6 +171,7 @@ type builder struct {
 	y       vector
 	terms   []termVectors
 	atoms   map[string]vector
+	step    int // of the search for reasons, the same for the same equation
 }
 
 type vector struct{ hi, lo []float64 }
@@ -193,6 +198,7 @@ type termVectors struct {
 	category *dataset.Column // nil for a number
 	levels   []string
 	base     string
+	baseRows int
 	values   vector
 }
 
@@ -278,7 +284,7 @@ func (b *builder) setAside(row int, reason, column string) {
 			return
 		}
 	}
-	b.reasons = append(b.reasons, SetAside{reason, column, 1})
+	b.reasons = append(b.reasons, SetAside{reason, column, 1, b.step})
 	b.reason[row] = len(b.reasons)
 }
 
@@ -314,6 +320,7 @@ func (b *builder) missing() {
 				continue
 			}
 			seen = append(seen, name)
+			b.step++
 			c, _ := b.table.Column(name)
 			if c.Missing == 0 {
 				continue
@@ -395,7 +402,7 @@ func (b *builder) levels(t *termVectors, e *equation.Expr, hasBase bool) error {
 
 func (b *builder) finish(constant, showSmall bool) (*Design, error) {
 	d := &Design{Dependent: b.eq.Dependent.String(), Constant: constant, Read: b.table.Rows, SetAside: b.reasons,
-		atoms: map[string]reduction.Column{}, means: map[string]float64{}, exprs: map[string]*equation.Expr{}}
+		atoms: map[string]reduction.Column{}, means: map[string]float64{}}
 	for i, r := range b.reason {
 		if r == 0 {
 			d.Index = append(d.Index, i)
@@ -439,6 +446,9 @@ func describeSetAside(reasons []SetAside) string {
 }
 
 func (b *builder) cut(v vector, index []int) reduction.Column {
+	if len(index) == len(v.hi) {
+		return reduction.Column{Hi: v.hi, Lo: v.lo}
+	}
 	c := reduction.Column{Hi: make([]float64, len(index))}
 	if v.lo != nil {
 		c.Lo = make([]float64, len(index))
@@ -473,7 +483,7 @@ func (b *builder) addTerm(d *Design, k int, t termVectors, showSmall bool) {
 				Category: name, Level: l, Values: col})
 		}
 		if hidden > 0 {
-			d.Notes = append(d.Notes, Note{"small-cells", fmt.Sprintf("%d levels of %s hold fewer than %d rows and are not named; --show-small-cells names them, if your data custodian allows", hidden, name, SmallCell)})
+			d.Notes = append(d.Notes, smallCells(hidden, name))
 		}
 		return
 	}
@@ -649,15 +659,31 @@ func (r *Regressor) degree() int {
 	return d
 }
 
+func smallCells(hidden int, category string) Note {
+	return Note{"small-cells", fmt.Sprintf("%d levels of %s hold fewer than %d rows and are not named; --show-small-cells names them, if your data custodian allows", hidden, category, SmallCell)}
+}
+
+func nothingToExplain(table, dependent string, rows int) error {
+	return &RefusedError{table, fmt.Sprintf("the dependent variable %s is the same in all %d rows used", dependent, rows), "there is nothing to explain; look at the sample"}
+}
+
+func sameInAll(table, regressor string, rows int) error {
+	return &RefusedError{table, fmt.Sprintf("%s is the same in all %d rows used, like the constant", regressor, rows), "leave it out, or widen the sample"}
+}
+
 func (b *builder) check(d *Design) error {
 	if constantColumn(d.Y) {
-		return &RefusedError{b.table.Name, fmt.Sprintf("the dependent variable %s is the same in all %d rows used", d.Dependent, d.Rows), "there is nothing to explain; look at the sample"}
+		return nothingToExplain(b.table.Name, d.Dependent, d.Rows)
 	}
 	for _, r := range d.Regressors {
 		if d.Constant && constantColumn(r.Values) {
-			return &RefusedError{b.table.Name, fmt.Sprintf("%s is the same in all %d rows used, like the constant", r.Name, d.Rows), "leave it out, or widen the sample"}
+			return sameInAll(b.table.Name, r.Name, d.Rows)
 		}
 	}
+	return b.checkNames(d)
+}
+
+func (b *builder) checkNames(d *Design) error {
 	names := map[string]bool{}
 	for _, r := range d.Regressors {
 		if names[r.Name] {
@@ -689,7 +715,7 @@ func (b *builder) notes(d *Design) {
 		if t.category == nil {
 			continue
 		}
-		count := 0
+		count := t.baseRows
 		for _, row := range d.Index {
 			if label(t.category, row) == t.base {
 				count++

@@ -44,11 +44,19 @@ func must(t *testing.T, csv, eq string, opt design.Options) *design.Design {
 	return d
 }
 
+// counted is what was set aside as a reader sees it.
+func counted(d *design.Design) (out []design.SetAside) {
+	for _, s := range d.SetAside {
+		out = append(out, design.SetAside{Reason: s.Reason, Column: s.Column, Count: s.Count})
+	}
+	return out
+}
+
 func TestRowsSetAsideByReasonAndColumn(t *testing.T) {
 	d := must(t, flats, "ln(rent) = area + rooms + district", design.Options{ShowSmallCells: true})
 	want := []design.SetAside{{Reason: "missing value", Column: "area", Count: 1}, {Reason: "missing value", Column: "rooms", Count: 1}, {Reason: "ln of a value that is not positive", Column: "rent", Count: 1}}
-	if !reflect.DeepEqual(d.SetAside, want) {
-		t.Errorf("set aside %+v, want %+v", d.SetAside, want)
+	if got := counted(d); !reflect.DeepEqual(got, want) {
+		t.Errorf("set aside %+v, want %+v", got, want)
 	}
 	if d.Rows != 4 || d.Read != 7 || !reflect.DeepEqual(d.Lines, []int{2, 5, 7, 8}) {
 		t.Errorf("rows %d of %d, lines %v", d.Rows, d.Read, d.Lines)
@@ -72,7 +80,7 @@ func TestSampleCondition(t *testing.T) {
 	}
 	d := must(t, flats, "rent = area", design.Options{Rows: cond})
 	want := []design.SetAside{{Reason: "outside the sample", Count: 2}}
-	if !reflect.DeepEqual(d.SetAside, want) || d.Rows != 5 {
+	if !reflect.DeepEqual(counted(d), want) || d.Rows != 5 {
 		t.Errorf("rows %d, set aside %+v", d.Rows, d.SetAside)
 	}
 }

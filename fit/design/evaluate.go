@@ -14,6 +14,7 @@ import (
 // eval computes an expression for every row that is still used; rows where it has no value are set aside with the
 // reason.
 func (b *builder) eval(e *equation.Expr) (vector, error) {
+	b.step++
 	n := b.table.Rows
 	switch e.Kind {
 	case equation.Name:
@@ -300,6 +301,16 @@ func (d *Design) dual(e *equation.Expr, variable string) (v, dv float64) {
 	return math.NaN(), math.NaN()
 }
 
+// HasProducts reports whether some regressor is a power or product.
+func (d *Design) HasProducts() bool {
+	for _, r := range d.Regressors {
+		if r.degree() > 1 {
+			return true
+		}
+	}
+	return false
+}
+
 // Columns returns the values of the regressors.
 func (d *Design) Columns() []reduction.Column {
 	out := make([]reduction.Column, len(d.Regressors))
@@ -311,6 +322,9 @@ func (d *Design) Columns() []reduction.Column {
 
 // Each gives the used rows block by block: the regressors and the file line of each row.
 func (d *Design) Each(yield func(cols []reduction.Column, lines []int) error) error {
+	if d.source != nil {
+		return d.Pass(yield)
+	}
 	return yield(d.Columns(), d.Lines)
 }
 

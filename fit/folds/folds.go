@@ -47,11 +47,11 @@ const Block = 4 * Groups
 // MostFolds is the number of folds up to which a large split is dealt in cells.
 const MostFolds = Groups / 2
 
-// NewRandom splits n rows into count balanced folds, repeats times. The same n, count, repeats and seed give the same plan;
+// NewRandom splits n rows into count balanced folds, repeats times; celled allows the rows of a large table to be dealt in cells. The same n, count, repeats and seed give the same plan;
 // fold sizes differ by at most one a chunk.
 //
 // It returns an error when count < 2, repeats < 1 or n < count.
-func NewRandom(n, count, repeats int, seed int64) (*Plan, error) {
+func NewRandom(n, count, repeats int, seed int64, celled bool) (*Plan, error) {
 	if count < 2 {
 		return nil, fmt.Errorf("folds: %d asked for, at least 2 are needed", count)
 	}
@@ -62,7 +62,7 @@ func NewRandom(n, count, repeats int, seed int64) (*Plan, error) {
 		return nil, fmt.Errorf("folds: %d rows cannot fill %d folds; ask for at most %d", n, count, n)
 	}
 	p := &Plan{Kind: Random, Count: count, Repeats: repeats, Cells: n, Cell: make([]int32, n)}
-	if n > Exact && count <= MostFolds {
+	if celled && n > Exact && count <= MostFolds {
 		p.Cells = Groups
 		d := NewDealer(seed)
 		for start := 0; start < n; start += Block {

@@ -8,7 +8,7 @@ import (
 
 func TestRandomIsBalancedSeededAndDiffersByRepeat(t *testing.T) {
 	for _, n := range []int{10, 57, 534, 90_001} {
-		p, err := NewRandom(n, 10, 3, 7)
+		p, err := NewRandom(n, 10, 3, 7, true)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -30,11 +30,11 @@ func TestRandomIsBalancedSeededAndDiffersByRepeat(t *testing.T) {
 		if reflect.DeepEqual(p.Fold[0], p.Fold[1]) {
 			t.Errorf("n=%d: two repeats are the same split", n)
 		}
-		again, _ := NewRandom(n, 10, 3, 7)
+		again, _ := NewRandom(n, 10, 3, 7, true)
 		if !reflect.DeepEqual(p, again) {
 			t.Errorf("n=%d: the same seed gave another plan", n)
 		}
-		other, _ := NewRandom(n, 10, 3, 8)
+		other, _ := NewRandom(n, 10, 3, 8, true)
 		if reflect.DeepEqual(p.Fold, other.Fold) {
 			t.Errorf("n=%d: another seed gave the same plan", n)
 		}
@@ -42,13 +42,13 @@ func TestRandomIsBalancedSeededAndDiffersByRepeat(t *testing.T) {
 }
 
 func TestRefusals(t *testing.T) {
-	if _, err := NewRandom(5, 10, 1, 1); err == nil {
+	if _, err := NewRandom(5, 10, 1, 1, true); err == nil {
 		t.Error("5 rows filled 10 folds")
 	}
-	if _, err := NewRandom(50, 1, 1, 1); err == nil {
+	if _, err := NewRandom(50, 1, 1, 1, true); err == nil {
 		t.Error("one fold was accepted")
 	}
-	if _, err := NewRandom(50, 5, 0, 1); err == nil {
+	if _, err := NewRandom(50, 5, 0, 1, true); err == nil {
 		t.Error("no repeat was accepted")
 	}
 	if _, err := NewLeaveOneOut(1); err == nil {

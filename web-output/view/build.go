@@ -110,7 +110,7 @@ func buildDiagnosis(c *compare.Comparison) Diagnosis {
 		v := rep.VIF[j]
 		g := Regressor{Name: r.Name, Term: d.Terms[r.Term].Name, Kind: string(r.Kind), Focal: c.FocalDeclared && c.Problem.Focal[j], Tangled: rep.Tangled[j],
 			VIF: Num(v), VIFCentered: Num(rep.CenteredVIF[j]), Tolerance: Num(1 / v), AuxiliaryR2: Num(1 - 1/v), StandardErrorFactor: Num(math.Sqrt(v)),
-			Mean: mean(c, j), SD: Num(s.SD(j)), StructuralShare: structuralShare(v, rep.CenteredVIF[j])}
+			Mean: Num(c.Means[j]), SD: Num(s.SD(j)), StructuralShare: structuralShare(v, rep.CenteredVIF[j])}
 		if math.IsInf(v, 1) {
 			g.VIFReason = "it depends exactly on other regressors"
 			g.Tolerance, g.AuxiliaryR2 = 0, 1
@@ -145,18 +145,6 @@ func buildDiagnosis(c *compare.Comparison) Diagnosis {
 			Reason: e.Reason, Sentence: e.Sentence})
 	}
 	return out
-}
-
-// mean is that over the rows used, also in a model without constant.
-func mean(c *compare.Comparison, j int) Num {
-	if c.Design.Constant {
-		return Num(c.Problem.Sample.Mean[j].Float())
-	}
-	sum := 0.0
-	for _, v := range c.Design.Regressors[j].Values.Hi {
-		sum += v
-	}
-	return Num(sum / float64(c.Design.Rows))
 }
 
 // structuralShare is 1 - ln(centred)/ln(as written), between 0 and 1; null where there is nothing to share out.
