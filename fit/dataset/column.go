@@ -72,10 +72,13 @@ func (b *builder) plain(s string, line int) bool {
 		first = 1
 	}
 	point := -1
+	var mant int64
 	for i := first; i < len(s); i++ {
-		if s[i] == '.' && point < 0 {
+		if c := s[i] - '0'; c <= 9 {
+			mant = mant*10 + int64(c)
+		} else if s[i] == '.' && point < 0 {
 			point = i
-		} else if s[i] < '0' || s[i] > '9' {
+		} else {
 			return false
 		}
 	}
@@ -87,14 +90,15 @@ func (b *builder) plain(s string, line int) bool {
 		shape.decimals = len(s) - point - 1
 		shape.groupsLike = shape.decimals == 3 && before >= 1 && before <= 3 && s[first] != '0'
 	}
-	if before+shape.decimals == 0 {
+	if digits := before + shape.decimals; digits == 0 || digits > 15 {
 		return false
 	}
 	shape.short = before <= 3
-	v, err := doubledouble.Parse(s)
-	if err != nil {
-		return false
+	m := float64(mant)
+	if s[0] == '-' {
+		m = -m // minus zero included
 	}
+	v, _ := doubledouble.Scaled(m, -shape.decimals) // at most 15 decimals
 	b.count(s, shape, line)
 	b.makeRoom()
 	b.store(v.Hi, v.Lo)

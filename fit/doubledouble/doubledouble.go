@@ -161,7 +161,7 @@ func Parse(s string) (Number, error) {
 		return Number{}, fmt.Errorf("%q is too large", s)
 	}
 	if m, exp, ok := smallDecimal(s); ok {
-		if x, ok := scale(m, exp); ok {
+		if x, ok := Scaled(m, exp); ok {
 			return x, nil
 		}
 	}
@@ -202,12 +202,12 @@ func parsePlain(s string) (Number, bool) {
 	if point < 0 {
 		return Number{Hi: m}, true
 	}
-	return scale(m, point-digits)
+	return Scaled(m, point-digits)
 }
 
-// scale returns m * 10^exp for a whole m below 2^53 and |exp| <= 22, where the power of ten is exact: the quotient of two exact numbers is
+// Scaled returns m * 10^exp for a whole m below 2^53 and |exp| <= 22, where the power of ten is exact: the quotient of two exact numbers is
 // correctly rounded, and what is left of the division is exact as well.
-func scale(m float64, exp int) (Number, bool) {
+func Scaled(m float64, exp int) (Number, bool) {
 	switch {
 	case exp == 0 || m == 0:
 		return Number{Hi: m}, true

@@ -64,7 +64,7 @@ func (m *Moments) add(hi, lo []float64) {
 		m.sumHi[i] = s
 		m.sumLo[i] += e + al
 		ch := m.crossHi[k : k+q-i]
-		cl := m.crossLo[k : k+q-i]
+		cl := m.crossLo[k : k+q-i][:len(ch)]
 		bh := hi[i:q]
 		bl := lo[i:q]
 		for j := range ch {
@@ -76,6 +76,61 @@ func (m *Moments) add(hi, lo []float64) {
 			t := s - c
 			cl[j] += ((c - (s - t)) + (p - t)) + e
 			ch[j] = s
+		}
+		k += q - i
+	}
+}
+
+// add4 is add for four rows in turn, with the same result to the last bit.
+func (m *Moments) add4(hi, lo *[4][]float64) {
+	m.N += 4
+	q := m.Q
+	h0, h1, h2, h3 := hi[0][:q], hi[1][:q], hi[2][:q], hi[3][:q]
+	l0, l1, l2, l3 := lo[0][:q], lo[1][:q], lo[2][:q], lo[3][:q]
+	k := 0
+	for i := range q {
+		for r := range hi {
+			s, e := doubledouble.TwoSum(m.sumHi[i], hi[r][i])
+			m.sumHi[i] = s
+			m.sumLo[i] += e + lo[r][i]
+		}
+		a0, a1, a2, a3 := h0[i], h1[i], h2[i], h3[i]
+		b0, b1, b2, b3 := l0[i], l1[i], l2[i], l3[i]
+		ch := m.crossHi[k : k+q-i]
+		cl := m.crossLo[k : k+q-i][:len(ch)]
+		x0, x1, x2, x3 := h0[i:][:len(ch)], h1[i:][:len(ch)], h2[i:][:len(ch)], h3[i:][:len(ch)]
+		y0, y1, y2, y3 := l0[i:][:len(ch)], l1[i:][:len(ch)], l2[i:][:len(ch)], l3[i:][:len(ch)]
+		for j := range ch {
+			c, low := ch[j], cl[j]
+
+			p := float64(a0 * x0[j])
+			e := math.FMA(a0, x0[j], -p) + (float64(a0*y0[j]) + float64(b0*x0[j]))
+			s := c + p
+			t := s - c
+			low += ((c - (s - t)) + (p - t)) + e
+			c = s
+
+			p = float64(a1 * x1[j])
+			e = math.FMA(a1, x1[j], -p) + (float64(a1*y1[j]) + float64(b1*x1[j]))
+			s = c + p
+			t = s - c
+			low += ((c - (s - t)) + (p - t)) + e
+			c = s
+
+			p = float64(a2 * x2[j])
+			e = math.FMA(a2, x2[j], -p) + (float64(a2*y2[j]) + float64(b2*x2[j]))
+			s = c + p
+			t = s - c
+			low += ((c - (s - t)) + (p - t)) + e
+			c = s
+
+			p = float64(a3 * x3[j])
+			e = math.FMA(a3, x3[j], -p) + (float64(a3*y3[j]) + float64(b3*x3[j]))
+			s = c + p
+			t = s - c
+			low += ((c - (s - t)) + (p - t)) + e
+
+			ch[j], cl[j] = s, low
 		}
 		k += q - i
 	}
@@ -223,19 +278,42 @@ func share(cols []Column, origin []doubledouble.Number, of []int32, out []*Momen
 }
 
 func sumShare(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, mine, shares int) {
-	hi, lo := make([]float64, len(cols)), make([]float64, len(cols))
-	for row, f := range of {
-		if int(f)%shares != mine {
-			continue
-		}
+	q := len(cols)
+	// Rows of one part are added four at a time, in file order: the part's sums are then read and written once for the four.
+	waiting := make([][4]int32, len(out))
+	count := make([]uint8, len(out))
+	var hi, lo [4][]float64
+	for k := range hi {
+		hi[k], lo[k] = make([]float64, q), make([]float64, q)
+	}
+	load := func(k, row int) {
 		for j, c := range cols {
 			h, e := doubledouble.TwoSum(c.Hi[row], -origin[j].Hi)
 			if c.Lo != nil {
 				e += c.Lo[row]
 			}
-			hi[j], lo[j] = h, e
+			hi[k][j], lo[k][j] = h, e
 		}
-		out[f].add(hi, lo)
+	}
+	for row, f := range of {
+		if int(f)%shares != mine {
+			continue
+		}
+		waiting[f][count[f]] = int32(row)
+		if count[f]++; count[f] < 4 {
+			continue
+		}
+		count[f] = 0
+		for k, r := range waiting[f] {
+			load(k, int(r))
+		}
+		out[f].add4(&hi, &lo)
+	}
+	for f, n := range count {
+		for k := range n {
+			load(0, int(waiting[f][k]))
+			out[f].add(hi[0], lo[0])
+		}
 	}
 }
 
