@@ -4,6 +4,7 @@ go 1.26
 
 require (
 	github.com/go-echarts/go-echarts/v2 v2.6.7
+	github.com/klauspost/compress v1.18.0
 	github.com/santhosh-tekuri/jsonschema/v6 v6.0.3
 	github.com/spf13/cobra v1.10.2
 	go.yaml.in/yaml/v3 v3.0.5

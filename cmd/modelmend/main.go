@@ -12,6 +12,7 @@ import (
 	"os"
 	"os/signal"
 	"syscall"
+	"time"
 )
 
 // The exit statuses.
@@ -24,10 +25,25 @@ const (
 
 func main() {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
-	status := run(ctx, os.Args[1:], os.Stdout, os.Stderr)
+	finished := make(chan int, 1)
+	go func() { finished <- run(ctx, os.Args[1:], os.Stdout, os.Stderr) }()
+	status := statusFailed
+	select {
+	case status = <-finished:
+	case <-ctx.Done():
+		// Whatever is at work may take a while to notice. Files are put into place whole, so that leaving now leaves nothing half-written.
+		select {
+		case status = <-finished:
+		case <-time.After(patience):
+			fmt.Fprintln(os.Stderr, "modelmend: stopped")
+		}
+	}
 	stop()
 	os.Exit(status)
 }
+
+// patience is how long an interrupted run may take to end by itself.
+const patience = 150 * time.Millisecond
 
 // run executes one command line and returns the exit status: 0 done, 1 the analysis failed, 2 wrong use, 3 flagged (only
 // when asked for).
