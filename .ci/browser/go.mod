@@ -7,6 +7,8 @@ require (
 	github.com/chromedp/chromedp v0.15.1
 )
 
+require github.com/klauspost/compress v1.18.0 // indirect
+
 require (
 	github.com/chromedp/sysutil v1.1.0 // indirect
 	github.com/go-json-experiment/json v0.0.0-20260214004413-d219187c3433 // indirect
