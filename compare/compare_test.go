@@ -158,7 +158,7 @@ func TestLongley(t *testing.T) {
 		case "hoerl-kennard-baldwin":
 			near(t, k.Rule, k.Value, 0.000400814755686, 1e-11)
 		case "generalized-cross-validation":
-			near(t, k.Rule, k.Value, 0.000199726547146890641, 1e-6)
+			near(t, k.Rule, k.Value, 0.000199726547146890641, 1e-11)
 		}
 	}
 	p := find(t, c, "components")

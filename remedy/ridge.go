@@ -191,11 +191,8 @@ func (r ridgeFit) candidates(f *Final) []Candidate {
 	if p.Constant {
 		constant = 1
 	}
-	gcv := func(k float64) float64 {
-		e := 1 - (constant+sp.RidgeDegrees(k))/n
-		return s.RSS(r.slopes(s, sp, k)) / n / (e * e)
-	}
-	out = append(out, Candidate{"generalized-cross-validation", "smallest generalised cross-validation (Golub, Heath and Wahba 1979), the whole range scanned", refine(t.Values, gcv)})
+	gcv, slope := r.generalized(f.AsIs.RSS, constant, n, sp)
+	out = append(out, Candidate{"generalized-cross-validation", "smallest generalised cross-validation (Golub, Heath and Wahba 1979), the whole range scanned", refine(t.Values, gcv, slope)})
 	if p.Rows != nil && s.N <= folds.Exact {
 		if k, ok := r.leaveOneOut(sp); ok {
 			out = append(out, Candidate{"leave-one-out", "smallest leave-one-out error, the scaling held at that of all rows", k})
@@ -228,37 +225,61 @@ func oneStandardError(t *Tuning, towardsEnd bool) int {
 	return place
 }
 
-// refine finds the smallest value of f over the grid and narrows it down between its neighbours by golden section. The
-// whole grid is scanned, since f may have several minima.
-func refine(grid []float64, f func(float64) float64) float64 {
-	best, bestValue := 0, math.Inf(1)
-	for i, k := range grid {
-		if v := f(k); v < bestValue {
-			best, bestValue = i, v
+// generalized returns the generalised cross-validation criterion (RSS/n)/(1-(1+df)/n)^2 of a penalty and the derivative of its logarithm, from
+//
+//	RSS(k) = RSS(0) + sum u^2 k^2/(l+k)^2,  df(k) = sum l/(l+k),
+//
+// with l the eigenvalues and u the parts of y along the directions.
+func (r ridgeFit) generalized(rss0, constant, n float64, sp *linear.Spectrum) (value, slope func(k float64) float64) {
+	parts := func(k float64) (rss, rssSlope, df, dfSlope float64) {
+		rss, df = rss0, float64(sp.Spared())
+		for i, sigma := range sp.Sigma {
+			l, u := sigma*sigma, sp.UZ[i]
+			w := l + k
+			rss += u * u * k * k / (w * w)
+			rssSlope += 2 * u * u * k * l / (w * w * w)
+			df += l / w
+			dfSlope -= l / (w * w)
 		}
+		return rss, rssSlope, df, dfSlope
 	}
-	if best == 0 && len(grid) > 1 {
-		best = 0
+	value = func(k float64) float64 {
+		rss, _, df, _ := parts(k)
+		e := 1 - (constant+df)/n
+		return rss / n / (e * e)
+	}
+	slope = func(k float64) float64 {
+		rss, rssSlope, df, dfSlope := parts(k)
+		return rssSlope/rss + 2*dfSlope/n/(1-(constant+df)/n)
+	}
+	return value, slope
+}
+
+// refine finds the smallest value of f over the grid and narrows it down between its neighbours to where the slope changes its sign. The whole grid
+// is scanned, since f may have several minima; a minimum at an end of the grid stays there.
+func refine(grid []float64, f, slope func(float64) float64) float64 {
+	best := 0
+	for i, k := range grid {
+		if f(k) < f(grid[best]) {
+			best = i
+		}
 	}
 	lo, hi := grid[max(0, best-1)], grid[min(len(grid)-1, best+1)]
-	ratio := (math.Sqrt(5) - 1) / 2
-	a, b := hi-ratio*(hi-lo), lo+ratio*(hi-lo)
-	fa, fb := f(a), f(b)
-	for range 80 {
-		if fa <= fb {
-			hi, b, fb = b, a, fa
-			a = hi - ratio*(hi-lo)
-			fa = f(a)
+	if !(slope(lo) < 0 && slope(hi) > 0) {
+		return grid[best]
+	}
+	for range 200 {
+		mid := lo + (hi-lo)/2
+		if mid <= lo || mid >= hi {
+			break
+		}
+		if slope(mid) < 0 {
+			lo = mid
 		} else {
-			lo, a, fa = a, b, fb
-			b = lo + ratio*(hi-lo)
-			fb = f(b)
+			hi = mid
 		}
 	}
-	if mid := (lo + hi) / 2; f(mid) <= bestValue {
-		return mid
-	}
-	return grid[best]
+	return lo
 }
 
 // leaveOneOut returns the penalty of the grid with the smallest sum of squared e_i/(1-h_ii); it takes one pass over the rows
