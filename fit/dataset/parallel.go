@@ -55,22 +55,21 @@ func loneReturn(s string) bool {
 func (r *reading) sideBySide(pieces []*reading) error {
 	errs := make([]error, len(pieces))
 	each(len(pieces), func(i int) {
-		p := pieces[i]
-		s := newSplitter(p.text, p.delimiter)
-		s.line = p.firstLine
-		errs[i] = p.rows(s)
+		errs[i] = pieces[i].plainRows(pieces[i].firstLine)
 	})
 	for _, err := range errs {
 		if err != nil {
 			return err
 		}
 	}
-	for i, p := range pieces {
+	waiting := 0 // blank lines that count once a row follows
+	for _, p := range pieces {
 		r.table.Rows += p.table.Rows
-		r.blanks += p.blanks
-		if i < len(pieces)-1 {
-			r.blanks += p.pending
+		if p.table.Rows > 0 {
+			r.blanks += waiting + p.blanks
+			waiting = 0
 		}
+		waiting += p.pending
 	}
 	r.table.Lines = make([]int, 0, r.table.Rows)
 	for _, p := range pieces {

@@ -309,9 +309,13 @@ func (t *Table) pass(yield func(*reading) error) (hash string, err error) {
 	for range workers {
 		go func() {
 			for j := range work {
-				s := newSplitter(j.r.text, j.r.delimiter)
-				s.line = j.r.firstLine
-				j.err = j.r.rows(s)
+				if strings.IndexByte(j.r.text, '"') < 0 {
+					j.err = j.r.plainRows(j.r.firstLine)
+				} else {
+					s := newSplitter(j.r.text, j.r.delimiter)
+					s.line = j.r.firstLine
+					j.err = j.r.rows(s)
+				}
 				if j.err == nil {
 					j.r.text = ""
 				}
