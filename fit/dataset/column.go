@@ -178,7 +178,7 @@ func (b *builder) text(s string, line int) {
 // startCodes makes room for codes; the rows before are missing.
 func (b *builder) startCodes() {
 	b.index = map[string]int32{}
-	b.column.Codes = make([]int32, b.rows, b.capacity)
+	b.column.Codes = make([]int32, b.rows, max(b.rows, b.capacity))
 	for i := range b.column.Codes {
 		b.column.Codes[i] = -1
 	}
@@ -220,7 +220,7 @@ func (b *builder) makeRoom() {
 	if b.column.Hi != nil || b.texts > 0 {
 		return
 	}
-	b.column.Hi = make([]float64, b.rows, b.capacity)
+	b.column.Hi = make([]float64, b.rows, max(b.rows, b.capacity))
 	for i := range b.column.Hi {
 		b.column.Hi[i] = math.NaN()
 	}
@@ -231,7 +231,7 @@ func (b *builder) store(hi, lo float64) {
 		return
 	}
 	if lo != 0 && b.column.Lo == nil {
-		b.column.Lo = make([]float64, len(b.column.Hi), b.capacity)
+		b.column.Lo = make([]float64, len(b.column.Hi), max(len(b.column.Hi), b.capacity))
 	}
 	b.column.Hi = append(b.column.Hi, hi)
 	if b.column.Lo != nil {
