@@ -14,7 +14,7 @@ import (
 )
 
 // StreamBytes is the size from which Open does not hold a file in memory.
-const StreamBytes = 96 << 20
+const StreamBytes = 16 << 20
 
 // ErrKinds ends a pass over a streamed table in which a column turned out to hold something else than its first rows said. Survey settles it.
 var ErrKinds = errors.New("a column holds something else than its first rows")
