@@ -4,8 +4,6 @@ import (
 	"math"
 	"slices"
 	"strings"
-
-	"modelmend/fit/doubledouble"
 )
 
 // spotted is a cell worth a message.
@@ -44,7 +42,6 @@ func (b *builder) add(c cell, line int) {
 		return
 	}
 	if b.plain(c.text, line) {
-		b.rows++
 		return
 	}
 	if mark, missing := missingMark(c.text); missing {
@@ -60,49 +57,6 @@ func (b *builder) add(c cell, line int) {
 	}
 	b.value(c.text, line)
 	b.rows++
-}
-
-// plain stores a cell of digits with or without a point, the form of nearly every number, in one look; it reports false for any other.
-func (b *builder) plain(s string, line int) bool {
-	if len(s) == 0 || len(s) > 17 || b.index != nil {
-		return false
-	}
-	first := 0
-	if s[0] == '-' || s[0] == '+' {
-		first = 1
-	}
-	point := -1
-	var mant int64
-	for i := first; i < len(s); i++ {
-		if c := s[i] - '0'; c <= 9 {
-			mant = mant*10 + int64(c)
-		} else if s[i] == '.' && point < 0 {
-			point = i
-		} else {
-			return false
-		}
-	}
-	shape := shape{form: wholeForm}
-	before := len(s) - first
-	if point >= 0 {
-		shape.form = pointForm
-		before = point - first
-		shape.decimals = len(s) - point - 1
-		shape.groupsLike = shape.decimals == 3 && before >= 1 && before <= 3 && s[first] != '0'
-	}
-	if digits := before + shape.decimals; digits == 0 || digits > 15 {
-		return false
-	}
-	shape.short = before <= 3
-	m := float64(mant)
-	if s[0] == '-' {
-		m = -m // minus zero included
-	}
-	v, _ := doubledouble.Scaled(m, -shape.decimals) // at most 15 decimals
-	b.count(s, shape, line)
-	b.makeRoom()
-	b.store(v.Hi, v.Lo)
-	return true
 }
 
 // value stores a cell that is not missing.

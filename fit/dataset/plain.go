@@ -87,7 +87,36 @@ func (b *builder) scan(text string, i int, delimiter byte, line int) (end int, o
 	if b.index != nil {
 		return 0, false
 	}
-	start := i
+	v, shape, end, ok := plainNumber(text, i)
+	if !ok || (end < len(text) && text[end] != delimiter && text[end] != '\n' && text[end] != '\r') {
+		return 0, false
+	}
+	b.storeNumber(v, text[i:end], shape, line)
+	return end, true
+}
+
+// plain stores a cell of digits with or without a point, the form of nearly every number; it reports false for any other.
+func (b *builder) plain(s string, line int) bool {
+	if b.index != nil {
+		return false
+	}
+	v, shape, end, ok := plainNumber(s, 0)
+	if !ok || end < len(s) {
+		return false
+	}
+	b.storeNumber(v, s, shape, line)
+	return true
+}
+
+func (b *builder) storeNumber(v doubledouble.Number, cell string, shape shape, line int) {
+	b.count(cell, shape, line)
+	b.makeRoom()
+	b.store(v.Hi, v.Lo)
+	b.rows++
+}
+
+// plainNumber reads a sign, digits and at most one point at i, at most 15 digits in all, and returns where they end.
+func plainNumber(text string, i int) (v doubledouble.Number, form shape, end int, ok bool) {
 	negative := false
 	if i < len(text) && (text[i] == '-' || text[i] == '+') {
 		negative = text[i] == '-'
@@ -104,7 +133,7 @@ func (b *builder) scan(text string, i int, delimiter byte, line int) (end int, o
 		i++
 	}
 	before, after := i-first, 0
-	shape := shape{form: wholeForm, short: before <= 3}
+	form = shape{form: wholeForm, short: before <= 3}
 	if i < len(text) && text[i] == '.' {
 		i++
 		point := i
@@ -117,24 +146,17 @@ func (b *builder) scan(text string, i int, delimiter byte, line int) (end int, o
 			i++
 		}
 		after = i - point
-		shape.form = pointForm
-		shape.decimals = after
-		shape.groupsLike = after == 3 && before >= 1 && before <= 3 && text[first] != '0'
+		form.form = pointForm
+		form.decimals = after
+		form.groupsLike = after == 3 && before >= 1 && before <= 3 && text[first] != '0'
 	}
 	if digits := before + after; digits == 0 || digits > 15 {
-		return 0, false
-	}
-	if i < len(text) && text[i] != delimiter && text[i] != '\n' && text[i] != '\r' {
-		return 0, false
+		return v, form, i, false
 	}
 	m := float64(mant)
 	if negative {
-		m = -m
+		m = -m // minus zero included
 	}
-	v, _ := doubledouble.Scaled(m, -after) // at most 15 decimals
-	b.count(text[start:i], shape, line)
-	b.makeRoom()
-	b.store(v.Hi, v.Lo)
-	b.rows++
-	return i, true
+	v, _ = doubledouble.Scaled(m, -after) // at most 15 decimals
+	return v, form, i, true
 }

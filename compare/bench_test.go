@@ -1,0 +1,60 @@
+package compare_test
+
+import (
+	"context"
+	"fmt"
+	"math/rand/v2"
+	"strings"
+	"testing"
+
+	"modelmend/compare"
+	"modelmend/fit/dataset"
+)
+
+// invented makes n rows of p regressors of which the first five move together.
+func invented(b *testing.B, n, p int) (*dataset.Table, string) {
+	b.Helper()
+	rng := rand.New(rand.NewPCG(3, 4))
+	names := []string{"y"}
+	for j := range p {
+		names = append(names, fmt.Sprintf("x%d", j))
+	}
+	var cells [][]float64
+	for range n {
+		common := rng.NormFloat64()
+		row := []float64{rng.NormFloat64()}
+		for j := range p {
+			v := rng.NormFloat64()
+			if j < 5 {
+				v = common + 0.2*v
+			}
+			row = append(row, v)
+			row[0] += v / float64(j+1)
+		}
+		cells = append(cells, row)
+	}
+	return numbers(b, names, cells), "y = " + strings.Join(names[1:], " + ")
+}
+
+// BenchmarkNested runs one remedy with its tuning learned inside every fold, beside the model left alone.
+func BenchmarkNested(b *testing.B) {
+	for _, size := range []struct{ n, p int }{{1000, 10}, {1000, 20}, {20000, 20}} {
+		table, eq := invented(b, size.n, size.p)
+		for _, key := range []string{"ridge", "components"} {
+			b.Run(fmt.Sprintf("%s/n=%d/p=%d", key, size.n, size.p), func(b *testing.B) {
+				s := newStudy(eq)
+				for _, off := range []string{"drop", "index", "center", "ridge", "components"} {
+					if off != key {
+						s.Remedies = append(s.Remedies, compare.RemedySetting{Remedy: off, Off: true})
+					}
+				}
+				b.ReportAllocs()
+				for b.Loop() {
+					if _, err := compare.Run(context.Background(), table, s, compare.Options{}); err != nil {
+						b.Fatal(err)
+					}
+				}
+			})
+		}
+	}
+}
