@@ -154,7 +154,7 @@ func (c *Comparison) outOfSample(ctx context.Context, red *reduction.Reduction, 
 		if opt.Progress != nil {
 			mu.Lock()
 			done++
-			opt.Progress(done, len(places))
+			opt.Progress("splits learned", done, len(places))
 			mu.Unlock()
 		}
 	})

@@ -22,9 +22,10 @@ import (
 
 // Options bound a run without changing its result.
 type Options struct {
-	Workers  int                    // 0: one a core
-	Progress func(done, total int)  // called from one goroutine at a time; may be nil
-	Warn     func(code, msg string) // may be nil
+	Workers int // 0: one a core
+	// Progress hears how far a stage ("rows read", "splits learned") has come; total is 0 where it is not known. It is called from one goroutine at
+	// a time and may be nil.
+	Progress func(stage string, done, total int)
 }
 
 // Comparison is everything that is known once all alternatives are fitted.

@@ -73,6 +73,9 @@ func (c *Comparison) passOver(ctx context.Context, opt Options, set design.Optio
 		}
 		wait.put(cols)
 		seen += len(cols[0].Hi)
+		if opt.Progress != nil {
+			opt.Progress("rows read", seen, 0)
+		}
 		for seen > folds.Exact && wait.rows >= folds.Block {
 			add(folds.Block)
 		}

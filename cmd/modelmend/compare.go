@@ -110,7 +110,9 @@ func newCheck() *cobra.Command {
 			if err != nil {
 				return err
 			}
-			c, err := compare.Check(cmd.Context(), table, study, compare.Options{Workers: s.workers})
+			bar := newProgress(cmd.ErrOrStderr())
+			c, err := compare.Check(cmd.Context(), table, study, compare.Options{Workers: s.workers, Progress: bar.step})
+			bar.end()
 			if err != nil {
 				return classify(err)
 			}

@@ -270,18 +270,22 @@ func newProgress(w io.Writer) *progress {
 	return &progress{w: w, start: time.Now()}
 }
 
-func (p *progress) step(done, total int) {
+func (p *progress) step(stage string, done, total int) {
 	if p.w == nil || time.Since(p.start) < time.Second || time.Since(p.last) < 100*time.Millisecond {
 		return
 	}
 	p.last, p.drawn = time.Now(), true
 	const size = 30
-	n := size * done / max(total, 1)
-	fmt.Fprintf(p.w, "\r[%s%s] %d of %d splits", strings.Repeat("=", n), strings.Repeat(" ", size-n), done, total)
+	if total <= 0 {
+		fmt.Fprintf(p.w, "\r%-70s", fmt.Sprintf("%d %s", done, stage))
+		return
+	}
+	n := size * done / total
+	fmt.Fprintf(p.w, "\r%-70s", fmt.Sprintf("[%s%s] %d of %d %s", strings.Repeat("=", n), strings.Repeat(" ", size-n), done, total, stage))
 }
 
 func (p *progress) end() {
 	if p.drawn {
-		fmt.Fprintf(p.w, "\r%s\r", strings.Repeat(" ", 60))
+		fmt.Fprintf(p.w, "\r%-70s\r", "")
 	}
 }
