@@ -344,3 +344,17 @@ func TestWithoutScript(t *testing.T) {
 		t.Errorf("%d controls that cannot work are shown", controls)
 	}
 }
+
+// TestCursorsAreDrawn: each tuning chart shows where its slider stands, on the logarithmic axis of the penalty too.
+func TestCursorsAreDrawn(t *testing.T) {
+	b := open(t, write(t, "demo"), "", 1280, 900)
+	n := eval[int](b, `[...document.querySelectorAll(".tuned .chart")].filter(box => echarts.getInstanceByDom(box).getOption().series.some(s => s.markLine && s.markLine.data && s.markLine.data.length && s.markLine.precision > 10)).length`)
+	if all := eval[int](b, `document.querySelectorAll(".tuned .chart").length`); n != all || n == 0 {
+		t.Errorf("%d of %d tuning charts have a cursor", n, all)
+	}
+	// The line itself: a path of the accent colour that runs straight down, in each drawing.
+	drawn := eval[int](b, `(() => { const accent = getComputedStyle(document.documentElement).getPropertyValue("--accent").trim(); return [...document.querySelectorAll(".tuned .chart")].filter(box => [...box.querySelectorAll("path")].some(p => { const m = /^M(\S+) (\S+)L(\S+) (\S+)$/.exec(p.getAttribute("d") || ""); return p.getAttribute("stroke") === accent && m && m[1] === m[3] && m[2] !== m[4]; })).length; })()`)
+	if drawn != n {
+		t.Errorf("a cursor is drawn in %d of %d charts", drawn, n)
+	}
+}

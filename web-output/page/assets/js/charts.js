@@ -150,7 +150,8 @@ function heat(page, box, option, name, c) {
   const many = columns.length > (narrow ? 6 : 13);
   series.label = { show: !many, fontSize: 10.5, textBorderWidth: 0, formatter: (p) => {
     const v = p.value[2];
-    return Math.abs(v) < 0.05 ? "" : minus(v.toFixed(2));
+    if (Math.abs(v) < 0.05) return "";
+    return minus(v.toFixed(Math.abs(v) >= 0.995 && Math.abs(v) < 1 ? 4 : 2)); // nearly one is not one
   } };
   series.data = series.data.map((d) => ({ value: d.value, label: { color: Math.abs(d.value[2]) > 0.55 ? c.paper : c.ink } }));
   series.emphasis = { itemStyle: { borderColor: c.accent, borderWidth: 2 } };
@@ -172,7 +173,7 @@ function folds(page, option, c) {
 }
 
 function cursorLine(c, data) {
-  return { silent: true, symbol: "none", animation: false, label: { show: false }, lineStyle: { color: c.accent, width: 2, type: "solid" }, data };
+  return { silent: true, symbol: "none", animation: false, precision: 15, label: { show: false }, lineStyle: { color: c.accent, width: 2, type: "solid" }, data };
 }
 
 function pathStyles(page, c) {
