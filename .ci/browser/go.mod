@@ -7,7 +7,13 @@ require (
 	github.com/chromedp/chromedp v0.15.1
 )
 
-require github.com/klauspost/compress v1.18.0 // indirect
+require (
+	github.com/andybalholm/brotli v1.1.0 // indirect
+	github.com/google/uuid v1.6.0 // indirect
+	github.com/klauspost/compress v1.18.0 // indirect
+	github.com/parquet-go/parquet-go v0.25.1 // indirect
+	github.com/pierrec/lz4/v4 v4.1.21 // indirect
+)
 
 require (
 	github.com/chromedp/sysutil v1.1.0 // indirect

@@ -35,7 +35,7 @@ const asUTF8 = "open it in the program that made it and save it as CSV in UTF-8"
 func checkHead(name string, head []byte) error {
 	for _, m := range magics {
 		if bytes.HasPrefix(head, []byte(m.start)) {
-			return &FileError{Path: name, Reason: OtherFormat, Found: m.name, Advice: "this version reads CSV and TSV, plain or as .gz or .zst with that ending, so save the table as CSV first"}
+			return &FileError{Path: name, Reason: OtherFormat, Found: m.name, Advice: "this version reads CSV and TSV, plain or as .gz or .zst, and .parquet, each under its own ending"}
 		}
 	}
 	for _, bom := range []string{bomLittle4, bomBig4} {

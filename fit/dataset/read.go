@@ -17,7 +17,7 @@ import (
 const maxBytes = 4 << 30
 
 // otherEndings are formats that this version does not read.
-var otherEndings = []string{".bz2", ".xz", ".zip", ".xls", ".xlsx", ".ods", ".parquet", ".feather", ".arrow"}
+var otherEndings = []string{".bz2", ".xz", ".zip", ".xls", ".xlsx", ".ods", ".feather", ".arrow"}
 
 // ReadFile reads the table in a file.
 //
@@ -32,7 +32,7 @@ func ReadColumns(path string, need func(name string) bool) (*Table, error) {
 	for _, other := range otherEndings {
 		if ending == other {
 			return nil, &FileError{Path: path, Reason: OtherFormat, Found: "a " + ending + " file",
-				Advice: "this version reads CSV and TSV, plain or as .gz or .zst, so save the table as CSV first"}
+				Advice: "this version reads CSV and TSV, plain or as .gz or .zst, and Parquet, so save the table as one of these first"}
 		}
 	}
 	f, err := os.Open(path)
@@ -46,6 +46,9 @@ func ReadColumns(path string, need func(name string) bool) (*Table, error) {
 	}
 	if info.IsDir() {
 		return nil, &FileError{Path: path, Reason: Directory, Found: "a folder", Advice: "give the path of a file in it"}
+	}
+	if isParquet(path) {
+		return readParquet(f, path, need)
 	}
 	if isCompressed(path) {
 		return readCompressed(f, path, need)

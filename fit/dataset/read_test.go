@@ -321,7 +321,7 @@ func TestPathErrors(t *testing.T) {
 		{dir, Directory, "a folder"},
 		{filepath.Join(dir, "a.csv.gz"), NotFound, "no such file"},
 		{filepath.Join(dir, "a.xlsx"), OtherFormat, "reads CSV and TSV"},
-		{filepath.Join(dir, "a.parquet"), OtherFormat, "reads CSV and TSV"},
+		{filepath.Join(dir, "a.parquet"), NotFound, "no such file"},
 	} {
 		_, err := ReadFile(c.path)
 		var e *FileError

@@ -37,7 +37,7 @@ type stream struct {
 // carriage returns) are read whole. Errors are those of ReadFile.
 func Open(path string, need func(name string) bool) (*Table, error) {
 	info, err := os.Stat(path)
-	if err != nil || info.IsDir() || info.Size() < StreamBytes || isCompressed(path) {
+	if err != nil || info.IsDir() || info.Size() < StreamBytes || isCompressed(path) || isParquet(path) {
 		return ReadColumns(path, need)
 	}
 	return OpenInPieces(path, need, pieceBytes)
