@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"path/filepath"
 	"strings"
 
 	"github.com/spf13/cobra"
@@ -23,7 +24,15 @@ func newDraft() *cobra.Command {
 			if err != nil {
 				return err
 			}
-			text := draft(args[0], t)
+			data := args[0]
+			if output != "" && !filepath.IsAbs(data) { // a study names its table from its own folder
+				from, ferr := filepath.Abs(filepath.Dir(output))
+				to, terr := filepath.Abs(data)
+				if rel, err := filepath.Rel(from, to); ferr == nil && terr == nil && err == nil {
+					data = filepath.ToSlash(rel)
+				}
+			}
+			text := draft(data, t)
 			if output == "" {
 				_, err = fmt.Fprint(cmd.OutOrStdout(), plain(text))
 				return err

@@ -287,6 +287,17 @@ func TestDraftCanBeRun(t *testing.T) {
 		text, _ := os.ReadFile(study)
 		t.Errorf("%s\n%s", errOut, text)
 	}
+	elsewhere := filepath.Join(dir, "studies", "deep")
+	if err := os.MkdirAll(elsewhere, 0o700); err != nil {
+		t.Fatal(err)
+	}
+	t.Chdir(dir)
+	if status, _, errOut := call(t, "draft", "wages.csv", "-o", filepath.Join(elsewhere, "s.yaml")); status != statusDone {
+		t.Error(errOut)
+	}
+	if status, _, errOut := call(t, "check", filepath.Join(elsewhere, "s.yaml")); status != statusDone {
+		t.Errorf("a study in another folder does not find its table: %s", errOut)
+	}
 	if status, _, errOut := call(t, "draft", data, "-o", study); status != statusWrong || !strings.Contains(errOut, "exists already") {
 		t.Errorf("an existing file was overwritten: %s", errOut)
 	}

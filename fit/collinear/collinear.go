@@ -197,7 +197,7 @@ func involved(raw, centered *linear.Sample, c Cutoffs, constant bool) []int {
 	for i := first; i < len(shares); i++ {
 		sum := 0.0
 		for k, v := range shares[i] {
-			if index[k] >= c.ConditionIndex {
+			if index[k] >= c.ConditionIndex && !math.IsInf(index[k], 1) { // exact dependencies are a reason of their own
 				sum += v
 			}
 		}

@@ -7,6 +7,7 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -212,6 +213,11 @@ func TestBauer(t *testing.T) {
 	_, r := diagnose(t, table, "invented = x1 + x2 + x3 + x4 + x5", design.Options{NoConstant: true})
 	if len(r.Dependencies) == 0 || r.Dependencies[0].Kind != collinear.Exact || r.Dependencies[0].Equation != "x5 = 2*x4" {
 		t.Fatalf("dependencies: %+v", r.Dependencies)
+	}
+	for _, reason := range r.Reasons {
+		if reason.Kind != collinear.Exact && (slices.Contains(reason.Members, 3) || slices.Contains(reason.Members, 4)) {
+			t.Errorf("reason %+v names members of the exact dependency again", reason)
+		}
 	}
 	for k, want := range []float64{1, 1.038538, 1.325775, 15.9971} { // printed values
 		near(t, "scaled condition index", r.ScaledIndex[k], want, 5e-7)
