@@ -20,6 +20,7 @@ type source struct {
 	terms []sourceTerm
 	keep  []int                          // places of the regressors among all columns formed; nil before Settle
 	shift map[string]doubledouble.Number // means of atoms, for centred columns
+	means map[string]bool                // atoms and raw columns whose means are wanted: those of terms that are more than a column
 }
 
 // sourceTerm is a term with the levels of its category, all of them, in order.
@@ -42,8 +43,16 @@ func buildStream(t *dataset.Table, eq *equation.Equation, opt Options) (*Design,
 		return nil, err
 	}
 	d := &Design{Dependent: eq.Dependent.String(), Constant: !opt.NoConstant, means: map[string]float64{}, YDecimals: b.decimals(eq.Dependent),
-		source: &source{table: t, eq: eq, rows: opt.Rows, opt: opt}}
+		source: &source{table: t, eq: eq, rows: opt.Rows, opt: opt, means: map[string]bool{}}}
 	for k, e := range eq.Terms {
+		if e.Kind != equation.Name {
+			for _, f := range factorsOf(e) {
+				d.source.means[f.Atom] = true
+			}
+			for _, name := range e.Columns() {
+				d.source.means[name] = true
+			}
+		}
 		st := sourceTerm{expr: e}
 		if col, base, has := b.category(e); col != nil {
 			if col.Kind != dataset.Text {
@@ -100,7 +109,7 @@ func (d *Design) pass(shift map[string]doubledouble.Number, yield func(cols []re
 		if len(index) == 0 {
 			return nil
 		}
-		b.addSums(sums, index)
+		b.addSums(sums, s.means, index)
 		return yield(d.columns(b, index, shift), lines)
 	})
 	if err != nil {
@@ -142,9 +151,12 @@ func (b *builder) evaluateStream(terms []sourceTerm) (err error) {
 	return nil
 }
 
-// addSums adds up the atoms and the raw columns over the rows used.
-func (b *builder) addSums(sums map[string]doubledouble.Number, index []int) {
+// addSums adds up the atoms and raw columns that are wanted over the rows used.
+func (b *builder) addSums(sums map[string]doubledouble.Number, wanted map[string]bool, index []int) {
 	for name, v := range b.atoms {
+		if !wanted[name] {
+			continue
+		}
 		sum := sums[name]
 		for _, i := range index {
 			sum = sum.Add(v.at(i))
@@ -154,7 +166,7 @@ func (b *builder) addSums(sums map[string]doubledouble.Number, index []int) {
 	for _, e := range b.eq.Terms {
 		for _, name := range e.Columns() {
 			c, _ := b.table.Column(name)
-			if _, atom := b.atoms[name]; atom || c.Kind != dataset.Number {
+			if _, atom := b.atoms[name]; atom || !wanted[name] || c.Kind != dataset.Number {
 				continue
 			}
 			sum := sums[name]
