@@ -3,6 +3,7 @@ package compare
 import (
 	"context"
 	"math"
+	"runtime"
 	"sync"
 
 	"modelmend/fit/linear"
@@ -519,15 +520,15 @@ func (c *Comparison) Path(a *Alternative) []PathPoint {
 	if t == nil {
 		return nil
 	}
-	var out []PathPoint
-	for i := range t.Values {
+	out := make([]PathPoint, len(t.Values))
+	each(context.Background(), len(t.Values), runtime.GOMAXPROCS(0), func(i int) {
 		f := &remedy.Fitted{Slopes: t.Slopes[i], Factor: t.Factor(i)}
 		if t.Cross != nil {
 			f.Cross = t.Cross(i)
 		}
 		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF}
 		c.state(step)
-		out = append(out, PathPoint{step.Coefficients, step.Derived})
-	}
+		out[i] = PathPoint{step.Coefficients, step.Derived}
+	})
 	return out
 }

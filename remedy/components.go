@@ -152,6 +152,9 @@ func (c componentFit) finish(s *linear.Sample, f *Fitted, path func(int) []float
 		if k == sp.Rank && len(c.spare) == 0 {
 			return s.LeastSquares(true).Factor(s)
 		}
+		if len(c.spare) == 0 {
+			return s.WithConstant(s.Spectrum(nil).ComponentMap(k)) // M S M' = M for a projection
+		}
 		a, m := c.basis(s, sp, k)
 		return fitBasis(Training{Sample: s, Final: true}, a, m, Implied).Factor
 	}

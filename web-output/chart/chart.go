@@ -92,6 +92,15 @@ func Build(r *view.Results) (Options, error) {
 	return o, nil
 }
 
+// short rounds to six significant digits, more than a line can show.
+func short(n view.Num) view.Num {
+	v, err := strconv.ParseFloat(strconv.FormatFloat(float64(n), 'g', 6, 64), 64)
+	if err != nil {
+		return n
+	}
+	return view.Num(v)
+}
+
 func numbered(n int) []string {
 	out := make([]string, n)
 	for i := range out {
@@ -140,7 +149,7 @@ func paths(r *view.Results, a view.Alternative) *charts.Line {
 		var data []opts.LineData
 		for _, p := range a.Tuning.Path[first:] {
 			v := view.Num(float64(p.Coefficients[offset+j].Estimate) * float64(g.SD))
-			data = append(data, opts.LineData{Value: []any{p.Value, v}})
+			data = append(data, opts.LineData{Value: []any{short(p.Value), short(v)}})
 		}
 		c.AddSeries(fmt.Sprintf("c%d", j), data, charts.WithSeriesId(fmt.Sprintf("slope-%d", j)), charts.WithLineChartOpts(opts.LineChart{ShowSymbol: opts.Bool(a.Tuning.Parameter != "penalty")}))
 	}

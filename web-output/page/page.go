@@ -13,6 +13,7 @@ import (
 	"fmt"
 	"html/template"
 	"io"
+	"strconv"
 	"strings"
 	"sync"
 
@@ -89,6 +90,46 @@ func hash(s string) string {
 	return "sha256-" + base64.StdEncoding.EncodeToString(sum[:])
 }
 
+// slim leaves out of the page's data what results.json alone needs: the fold of every row, the covariances, and digits of the paths that no
+// slider shows.
+func slim(r *view.Results) *view.Results {
+	out := *r
+	out.Run.Folds.Assignment = [][]int{}
+	out.Alternatives = append([]view.Alternative{}, r.Alternatives...)
+	for i := range out.Alternatives {
+		a := &out.Alternatives[i]
+		a.Covariance = [][]view.Num{}
+		if a.Tuning == nil {
+			continue
+		}
+		t := *a.Tuning
+		t.Path = append([]view.PathPoint{}, t.Path...)
+		for k := range t.Path {
+			t.Path[k].Coefficients = fewer(t.Path[k].Coefficients)
+			t.Path[k].Derived = fewer(t.Path[k].Derived)
+		}
+		a.Tuning = &t
+	}
+	return &out
+}
+
+func fewer(list []view.PathCoefficient) []view.PathCoefficient {
+	out := make([]view.PathCoefficient, len(list))
+	for i, c := range list {
+		out[i] = view.PathCoefficient{Estimate: six(c.Estimate), StandardError: six(c.StandardError), EstimatedBias: six(c.EstimatedBias), EstimatedMSE: six(c.EstimatedMSE)}
+	}
+	return out
+}
+
+// six rounds to six significant digits.
+func six(n view.Num) view.Num {
+	v, err := strconv.ParseFloat(strconv.FormatFloat(float64(n), 'g', 6, 64), 64)
+	if err != nil {
+		return n
+	}
+	return view.Num(v)
+}
+
 // Script returns the joined script of the page, for checks.
 func Script() (string, error) {
 	a, err := loadAssets()
@@ -109,13 +150,11 @@ func Write(w io.Writer, r *view.Results) error {
 		return err
 	}
 	choices := choicesOf(r)
-	slim := *r
-	slim.Run.Folds.Assignment = [][]int{} // the page has no use for it; results.json holds it
 	data, err := json.Marshal(struct {
 		Results *view.Results `json:"results"`
 		Charts  chart.Options `json:"charts"`
 		Choices []choice      `json:"choices"`
-	}{&slim, charts, choices})
+	}{slim(r), charts, choices})
 	if err != nil {
 		return fmt.Errorf("the page's data cannot be written: %w", err)
 	}
