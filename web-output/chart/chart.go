@@ -84,7 +84,7 @@ func Build(r *view.Results) (Options, error) {
 			return o, err
 		}
 	}
-	if len(r.Alternatives) > 1 {
+	if len(r.Alternatives) > 1 && r.Alternatives[0].OutOfSample.Reason == "" {
 		if err := o.add("folds", folds(r)); err != nil {
 			return o, err
 		}

@@ -65,6 +65,11 @@ func TestOptions(t *testing.T) {
 	if n := len(all["correlations"].Series[0].Data); n != 0 {
 		t.Errorf("%d cells drawn for a correlation that is missing", n)
 	}
+	withheld := results("a")
+	withheld.Alternatives[0].OutOfSample.Reason = "withheld"
+	if o, err := chart.Build(withheld); err != nil || strings.Contains(strings.Join(o.Names, " "), "folds") {
+		t.Errorf("charts %v (%v): withheld errors are drawn", o.Names, err)
+	}
 	again, _ := chart.Build(results("</script><script>alert(1)</script>"))
 	c, _ := json.Marshal(again)
 	if string(b) != string(c) {

@@ -191,6 +191,16 @@ func TestNoRowLeaves(t *testing.T) {
 	}
 }
 
+// TestSmallPartsAreNotDrawn: where parts are small the page says so in place of the picture.
+func TestSmallPartsAreNotDrawn(t *testing.T) {
+	for rows, drawn := range map[int]bool{20: false, 60: false, 120: true} {
+		html := render(t, numbers(rows, 3), terms(3), nil)
+		if said := strings.Contains(html, "errors are not shown part by part."); said == drawn || strings.Contains(html, `data-chart="folds"`) != drawn {
+			t.Errorf("%d rows: said %v, drawn %v", rows, said, !drawn)
+		}
+	}
+}
+
 // TestFigures holds the Go twin to a table made by hand; format.test.js holds the other to the same.
 func TestFigures(t *testing.T) {
 	raw, err := os.ReadFile("testdata/figures.json")

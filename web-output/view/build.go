@@ -3,10 +3,12 @@ package view
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"modelmend/compare"
 	"modelmend/fit/collinear"
+	"modelmend/fit/design"
 	"modelmend/remedy"
 )
 
@@ -234,8 +236,16 @@ func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative
 	o := a.Out
 	out.OutOfSample = OutOfSample{RMSE: Num(o.RMSE), R2: Num(o.R2), RMSEDifference: Num(o.RMSEDifference), Folds: []FoldError{},
 		Difference: Difference{"mse", Num(o.Difference.Estimate), Num(o.Difference.Low), Num(o.Difference.High)}}
+	withheld := !c.Study.ShowSmallCells && slices.ContainsFunc(o.Folds, func(f compare.Fold) bool { return f.Rows < design.SmallCell })
+	if withheld { // all of them: a single one would follow from the others and the pooled error
+		out.OutOfSample.Reason = fmt.Sprintf("some held-out parts have fewer than %d rows: errors are not shown part by part", design.SmallCell)
+	}
 	for _, f := range o.Folds {
-		out.OutOfSample.Folds = append(out.OutOfSample.Folds, FoldError{f.Repeat, f.Fold, f.Rows, Num(f.MSE), Num(f.Chosen)})
+		e := FoldError{f.Repeat, f.Fold, f.Rows, Num(f.MSE), Num(f.Chosen)}
+		if withheld {
+			e.MSE = None()
+		}
+		out.OutOfSample.Folds = append(out.OutOfSample.Folds, e)
 	}
 	if a.Fitted.Tuning != nil {
 		out.Tuning = buildTuning(c, a)

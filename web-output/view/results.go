@@ -264,7 +264,7 @@ type OutOfSample struct {
 	Difference     Difference  `json:"difference"` // alternative minus as-is, mean squared error; negative is better
 	RMSEDifference Num         `json:"rmseDifference"`
 	Folds          []FoldError `json:"folds"`
-	Reason         string      `json:"reason,omitempty"`
+	Reason         string      `json:"reason,omitempty"` // why the errors in Folds are null
 }
 
 // Difference is a paired difference with its overlap-corrected interval.

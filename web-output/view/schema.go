@@ -45,6 +45,7 @@ var descriptions = map[string]string{
 	"Coefficient.Low":                    "95 % limit: estimate - t * standardError; given the tuning where one was chosen",
 	"OutOfSample.RMSE":                   "root of the squared errors pooled over all held-out predictions of all repeats",
 	"OutOfSample.R2":                     "1 - pooled squared error / pooled squared deviation from each training mean",
+	"FoldError.MSE":                      "null in all folds where one has fewer than ten rows, unless the study shows small cells",
 	"Difference.Estimate":                "mean over splits of the difference in mean squared error, alternative minus as-is: negative is better",
 	"Tuning.Penalty":                     "on the correlation form: (R + penalty I)^-1 r",
 	"Tuning.PenaltyTimes":                "penalty * (n-1), sd with divisor n-1",

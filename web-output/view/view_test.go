@@ -115,6 +115,44 @@ func TestResultsKeepTheContract(t *testing.T) {
 	validate(t, s, view.Build(c, "", "test"))
 }
 
+// TestSmallPartsAreWithheld: an error that rests on fewer than ten rows (on one, where each row is held out in turn) is not told, unless the
+// study asks for it; the pooled error stays.
+func TestSmallPartsAreWithheld(t *testing.T) {
+	s := schemaOf(t)
+	for _, c := range []struct {
+		name  string
+		folds compare.FoldSpec
+		show  bool
+		told  bool
+	}{
+		{"each row in turn", compare.FoldSpec{Kind: "leave-one-out"}, false, false},
+		{"ten parts of 63 rows", compare.FoldSpec{}, false, false},
+		{"six parts of 63 rows", compare.FoldSpec{Kind: "random", Count: 6}, false, true},
+		{"seven parts of 63 rows", compare.FoldSpec{Kind: "random", Count: 7}, false, false},
+		{"each row in turn, asked for", compare.FoldSpec{Kind: "leave-one-out"}, true, true},
+	} {
+		st := study("y = a + b + c")
+		st.Folds, st.ShowSmallCells = c.folds, c.show
+		run, err := compare.Run(context.Background(), table(t), st, compare.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		r := view.Build(run, "", "test")
+		validate(t, s, r)
+		for _, a := range r.Alternatives {
+			o := a.OutOfSample
+			if (o.Reason == "") != c.told || o.RMSE.IsNone() {
+				t.Errorf("%s, %s: reason %q, pooled error %v", c.name, a.Key, o.Reason, o.RMSE)
+			}
+			for _, f := range o.Folds {
+				if f.MSE.IsNone() == c.told {
+					t.Fatalf("%s, %s: the error of a part of %d rows is %v", c.name, a.Key, f.Rows, f.MSE)
+				}
+			}
+		}
+	}
+}
+
 // TestSchemaCatches: the schema refuses what the contract forbids.
 func TestSchemaCatches(t *testing.T) {
 	s := schemaOf(t)
