@@ -441,11 +441,11 @@ func solveFor(d Dependency, left int) (Dependency, bool) {
 	return out, true
 }
 
-// write sets the relation as text. Simple and exact relations use "="; others "~" and three significant digits.
+// write sets the relation as text. Simple and exact relations use "="; others "≈" and three significant digits.
 func write(names []string, d Dependency) string {
 	var b strings.Builder
 	b.WriteString(names[d.Left])
-	sign, digits := " ~ ", 3
+	sign, digits := " ≈ ", 3
 	if d.Simple || d.Kind == Exact {
 		sign, digits = " = ", 12
 		if !d.Simple {
