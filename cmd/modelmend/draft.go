@@ -6,8 +6,10 @@ import (
 	"os"
 	"path/filepath"
 	"strings"
+	"unicode"
 
 	"github.com/spf13/cobra"
+	"go.yaml.in/yaml/v3"
 
 	"modelmend/fit/dataset"
 	"modelmend/fit/equation"
@@ -50,9 +52,9 @@ func newDraft() *cobra.Command {
 // draft looks at the columns and writes a study that a newcomer edits.
 func draft(path string, t *dataset.Table) string {
 	var b strings.Builder
-	fmt.Fprintf(&b, "# A study for %s: %d rows, %d columns. Edit it, then run: modelmend compare THIS-FILE\n#\n# Columns:\n", t.Name, t.Rows, len(t.Columns))
+	fmt.Fprintf(&b, "# A study for %s: %d rows, %d columns. Edit it, then run: modelmend compare THIS-FILE\n#\n# Columns:\n", oneLine(t.Name), t.Rows, len(t.Columns))
 	for _, c := range t.Columns {
-		fmt.Fprintf(&b, "#   %-28s %s\n", strings.ReplaceAll(c.Name, "\n", " "), describeColumn(c))
+		fmt.Fprintf(&b, "#   %-28s %s\n", oneLine(c.Name), oneLine(describeColumn(c)))
 	}
 	eq := exampleEquation(t)
 	if eq == "" {
@@ -72,8 +74,26 @@ func draft(path string, t *dataset.Table) string {
 	return b.String()
 }
 
+// oneLine keeps a name from the file inside a comment: whatever could end a line becomes a blank.
+func oneLine(s string) string {
+	return strings.Map(func(r rune) rune {
+		if !unicode.IsPrint(r) {
+			return ' '
+		}
+		return r
+	}, s)
+}
+
+// yamlText writes s as one YAML scalar on one line.
 func yamlText(s string) string {
-	return "'" + strings.ReplaceAll(s, "'", "''") + "'"
+	if oneLine(s) == s {
+		return "'" + strings.ReplaceAll(s, "'", "''") + "'"
+	}
+	b, err := yaml.Marshal(&yaml.Node{Kind: yaml.ScalarNode, Style: yaml.DoubleQuotedStyle, Value: s})
+	if err != nil {
+		panic("a text cannot be written as YAML: " + err.Error())
+	}
+	return strings.TrimSuffix(string(b), "\n")
 }
 
 func describeColumn(c *dataset.Column) string {

@@ -10,6 +10,7 @@ import (
 	"strings"
 	"testing"
 
+	"modelmend/compare"
 	"modelmend/remedy"
 	"modelmend/web-output/view"
 )
@@ -297,6 +298,20 @@ func TestDraftCanBeRun(t *testing.T) {
 	}
 	if status, _, errOut := call(t, "check", filepath.Join(elsewhere, "s.yaml")); status != statusDone {
 		t.Errorf("a study in another folder does not find its table: %s", errOut)
+	}
+	// A name with a line end must neither add a key to the study nor get lost.
+	odd := filepath.Join(dir, "odd.csv")
+	if err := os.WriteFile(odd, []byte("y,\"a\rfolds: 5\",\"b\nseed: 1\"\n1,2,3\n2,3,5\n3,5,4\n4,4,4\n"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	if status, _, errOut := call(t, "draft", odd, "-o", filepath.Join(dir, "odd.yaml")); status != statusDone {
+		t.Error(errOut)
+	}
+	if s, err := readStudy(filepath.Join(dir, "odd.yaml")); err != nil || s.Folds.Kind != "" || s.Seed != compare.DefaultSeed {
+		t.Errorf("a column name changed the study: %+v (%v)", s, err)
+	}
+	if status, _, errOut := call(t, "check", filepath.Join(dir, "odd.yaml")); status != statusDone {
+		t.Error(errOut)
 	}
 	if status, _, errOut := call(t, "draft", data, "-o", study); status != statusWrong || !strings.Contains(errOut, "exists already") {
 		t.Errorf("an existing file was overwritten: %s", errOut)
