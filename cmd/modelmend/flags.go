@@ -65,7 +65,7 @@ func (f *studyFlags) load(cmd *cobra.Command, arg string) (*compare.Study, *data
 		return nil, nil, err
 	}
 	var need func(name string) bool
-	if given := strings.TrimSpace(study.Equation) != ""; given {
+	if strings.TrimSpace(study.Equation) != "" {
 		var err error
 		if need, err = study.Columns(); err != nil {
 			return nil, nil, classify(err)

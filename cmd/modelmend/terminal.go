@@ -9,6 +9,7 @@ import (
 	"time"
 	"unicode/utf8"
 
+	"modelmend/fit/figures"
 	"modelmend/web-output/view"
 )
 
@@ -201,7 +202,7 @@ func checkText(r *view.Results) string {
 		if g.VIFCentered.IsNone() {
 			centered = "exact"
 		}
-		fmt.Fprintf(&b, "%s  %16s  %23s  %8s  %19s\n", pad(g.Name, nameWidth), cell(g.StandardErrorFactor), percent(float64(g.AuxiliaryR2)), vif, centered)
+		fmt.Fprintf(&b, "%s  %16s  %23s  %8s  %19s\n", pad(g.Name, nameWidth), cell(g.StandardErrorFactor), percent(g.AuxiliaryR2), vif, centered)
 	}
 	if len(r.Diagnosis.NearDependencies) > 0 {
 		b.WriteString("\nWhat moves together:\n")
@@ -238,17 +239,11 @@ func checkText(r *view.Results) string {
 	return b.String()
 }
 
-func percent(share float64) string {
-	if math.IsNaN(share) {
+func percent(share view.Num) string {
+	if share.IsNone() {
 		return "-"
 	}
-	p := 100 * share
-	switch {
-	case p >= 99.95 && share < 1:
-		return fmt.Sprintf("%.3f %%", math.Min(p, 99.999))
-	default:
-		return fmt.Sprintf("%.1f %%", p)
-	}
+	return figures.Percent(float64(share))
 }
 
 // progress draws a bar on a terminal once a run takes longer than a second; it draws nothing when piped.

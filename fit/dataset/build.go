@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"slices"
 	"strings"
+
+	"modelmend/fit/figures"
 )
 
 // reading is the work on one text.
@@ -117,7 +119,7 @@ func (r *reading) checkNames(names []string, line int) error {
 				Advice: "name the column or delete it"}
 		}
 		if j, taken := first[name]; taken {
-			return &LayoutError{Path: r.name, Line: line, Field: i + 1, Reason: SameName, Found: "the name " + shown(name) + " again",
+			return &LayoutError{Path: r.name, Line: line, Field: i + 1, Reason: SameName, Found: "the name " + figures.Quoted(name) + " again",
 				Expected: fmt.Sprintf("a name that field %d does not have already", j), Advice: "rename one of the two columns"}
 		}
 		first[name] = i + 1
@@ -170,7 +172,7 @@ func (r *reading) ragged(line, fields int) error {
 	e := &LayoutError{Path: r.name, Line: line, Reason: Ragged, Found: count(fields, "field"),
 		Expected: fmt.Sprintf("%d, one for each column name", len(r.builders)), Advice: "add the missing values, or delete the line if it is not a row"}
 	if fields > len(r.builders) {
-		e.Advice = "put quotes around a value that holds the delimiter " + shown(string(r.delimiter)) + ", or name the additional columns"
+		e.Advice = "put quotes around a value that holds the delimiter " + figures.Quoted(string(r.delimiter)) + ", or name the additional columns"
 	}
 	return e
 }
@@ -190,7 +192,7 @@ func (r *reading) layout(s *splitError) error {
 			"close the quote, or double it if it belongs to the value"
 		return e
 	}
-	e.Found, e.Expected, e.Advice = "text after a closed quote", "the delimiter "+shown(string(r.delimiter))+" or the end of the line",
+	e.Found, e.Expected, e.Advice = "text after a closed quote", "the delimiter "+figures.Quoted(string(r.delimiter))+" or the end of the line",
 		"double a quote that belongs to the value"
 	return e
 }

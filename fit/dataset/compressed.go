@@ -73,7 +73,7 @@ func readCompressed(f *os.File, path string, need func(name string) bool) (*Tabl
 }
 
 func damaged(path, kind string, err error) error {
-	return &FileError{Path: path, Reason: Unreadable, Found: fmt.Sprintf("a damaged %s file (%v)", kind, err), Advice: "unpack it with another program, or fetch it again", Err: nil}
+	return &FileError{Path: path, Reason: Unreadable, Found: fmt.Sprintf("a damaged %s file (%v)", kind, err), Advice: "fetch or write it again"}
 }
 
 // bounded ends with an error once more has come out than a table would give.

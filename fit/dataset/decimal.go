@@ -3,6 +3,8 @@ package dataset
 import (
 	"fmt"
 	"strings"
+
+	"modelmend/fit/figures"
 )
 
 // checkDecimals refuses columns of numbers whose decimal sign is not clear, and tells whether any has a comma.
@@ -63,7 +65,7 @@ func (b *builder) clear(e *CellError, trueComma, points bool, delimiter byte) bo
 		if other.line > at.line {
 			at, other = other, at
 		}
-		return set(at, fmt.Sprintf("the decimal sign of %s in line %d", shown(other.cell), other.line),
+		return set(at, fmt.Sprintf("the decimal sign of %s in line %d", figures.Quoted(other.cell), other.line),
 			"write one decimal sign throughout the column and no thousands separators")
 	case b.commas > 0 && b.commas == b.commaGroups && !trueComma && (points || delimiter == '\t' || b.shortWholes > 0):
 		return set(b.firstComma, "a number whose comma cannot be a thousands separator",

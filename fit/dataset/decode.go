@@ -8,7 +8,7 @@ import (
 	"unicode/utf8"
 )
 
-// magics are the first bytes of formats that this version does not read.
+// magics are the first bytes of what is no plain text; gzip, zstd and Parquet are read under their own endings only.
 var magics = []struct{ start, name string }{
 	{"\x1f\x8b", "a gzip file"},
 	{"\x28\xb5\x2f\xfd", "a zstd file"},
@@ -64,7 +64,7 @@ func checkBinary(name string, head []byte) error {
 	if half := len(head) / 2; half > 1 && max(zeros[0], zeros[1]) > half*3/4 && min(zeros[0], zeros[1]) < half/4 {
 		return &FileError{Path: name, Reason: NotUTF8, Found: "what looks like UTF-16 without a byte-order mark", Advice: asUTF8}
 	}
-	return &FileError{Path: name, Reason: Binary, Found: fmt.Sprintf("a file that is not text (a NUL byte at byte %d)", at+1), Advice: "give a CSV or TSV file"}
+	return &FileError{Path: name, Reason: Binary, Found: fmt.Sprintf("a file that is not text (a NUL byte at byte %d)", at+1), Advice: "give the table as CSV or TSV"}
 }
 
 // decode returns the text of a file without its byte-order mark, in UTF-8.
@@ -73,14 +73,14 @@ func decode(name, content string) (text string, notes []string, err error) {
 	if little || big {
 		text, err := fromUTF16(name, content[2:], big)
 		if err == nil && strings.IndexByte(text, 0) >= 0 {
-			err = &FileError{Path: name, Reason: Binary, Found: "a file that is not text (a NUL character)", Advice: "give a CSV or TSV file"}
+			err = &FileError{Path: name, Reason: Binary, Found: "a file that is not text (a NUL character)", Advice: "give the table as CSV or TSV"}
 		}
 		return text, []string{"converted from UTF-16 to UTF-8"}, err
 	}
 	text = strings.TrimPrefix(content, bomUTF8)
 	if at := strings.IndexByte(text, 0); at >= 0 {
 		return "", nil, &FileError{Path: name, Reason: Binary, Found: fmt.Sprintf("a file that is not text (a NUL byte at byte %d)", len(content)-len(text)+at+1),
-			Advice: "give a CSV or TSV file"}
+			Advice: "give the table as CSV or TSV"}
 	}
 	if !utf8.ValidString(text) {
 		return "", nil, encodingError(name, text)

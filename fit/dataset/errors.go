@@ -2,7 +2,8 @@ package dataset
 
 import (
 	"fmt"
-	"unicode/utf8"
+
+	"modelmend/fit/figures"
 )
 
 // Reason says which rule a file breaks.
@@ -38,7 +39,7 @@ type FileError struct {
 
 // Error returns where, what was found and what to do, on one line.
 func (e *FileError) Error() string {
-	return fmt.Sprintf("%s: found %s, expected a CSV or TSV file; %s", e.Path, e.Found, e.Advice)
+	return fmt.Sprintf("%s: found %s, expected a table as CSV, TSV or Parquet; %s", e.Path, e.Found, e.Advice)
 }
 
 // Unwrap returns the error of the system, if there is one.
@@ -80,13 +81,5 @@ type CellError struct {
 
 // Error returns where, what was found, what was expected and what to do, on one line.
 func (e *CellError) Error() string {
-	return fmt.Sprintf("%s:%d: column %s: found %s, expected %s; %s", e.Path, e.Line, shown(e.Name), shown(e.Cell), e.Expected, e.Advice)
-}
-
-// shown quotes what the file holds for a message and cuts it at 60 signs.
-func shown(s string) string {
-	if utf8.RuneCountInString(s) > 60 {
-		s = string([]rune(s)[:57]) + "..."
-	}
-	return fmt.Sprintf("%q", s)
+	return fmt.Sprintf("%s:%d: column %s: found %s, expected %s; %s", e.Path, e.Line, figures.Quoted(e.Name), figures.Quoted(e.Cell), e.Expected, e.Advice)
 }

@@ -18,6 +18,7 @@ import (
 	"github.com/parquet-go/parquet-go/format"
 
 	"modelmend/fit/doubledouble"
+	"modelmend/fit/figures"
 )
 
 func isParquet(path string) bool { return strings.EqualFold(filepath.Ext(path), ".parquet") }
@@ -51,7 +52,7 @@ func readParquet(f *os.File, path string, need func(name string) bool) (t *Table
 	for _, field := range file.Schema().Fields() {
 		name := field.Name()
 		if strings.TrimSpace(name) == "" || seen[name] {
-			return nil, &FileError{Path: path, Reason: OtherFormat, Found: fmt.Sprintf("a column named %s, empty or for a second time", shown(name)), Advice: "give every column a name of its own"}
+			return nil, &FileError{Path: path, Reason: OtherFormat, Found: fmt.Sprintf("a column named %s, empty or for a second time", figures.Quoted(name)), Advice: "give every column a name of its own"}
 		}
 		seen[name] = true
 		c := &Column{Name: name, Kind: Skipped}
@@ -63,7 +64,7 @@ func readParquet(f *os.File, path string, need func(name string) bool) (t *Table
 			if need == nil {
 				continue // nobody asked for it by name
 			}
-			return nil, &FileError{Path: path, Reason: OtherFormat, Found: fmt.Sprintf("the column %s, which holds lists or records", shown(name)), Advice: "unfold it into plain columns first"}
+			return nil, &FileError{Path: path, Reason: OtherFormat, Found: fmt.Sprintf("the column %s, which holds lists or records", figures.Quoted(name)), Advice: "unfold it into plain columns first"}
 		}
 		if err := parquetColumn(file, field, t.Rows, c); err != nil {
 			return nil, damaged(path, "Parquet", fmt.Errorf("column %s: %w", name, err))
@@ -281,8 +282,6 @@ func decimalValue(v parquet.Value, kind parquet.Kind, scale int) doubledouble.Nu
 // whole keeps the digits of a 64-bit whole number that a float64 would drop.
 func whole(n *big.Int) doubledouble.Number {
 	hi, _ := new(big.Float).SetInt(n).Float64()
-	rest, _ := new(big.Float).SetInt(n).Int(nil)
-	back, _ := new(big.Float).SetFloat64(hi).Int(nil)
-	lo, _ := new(big.Float).SetInt(rest.Sub(rest, back)).Float64()
-	return doubledouble.Number{Hi: hi, Lo: lo}
+	near, _ := big.NewFloat(hi).Int(nil)
+	return doubledouble.Number{Hi: hi, Lo: float64(new(big.Int).Sub(n, near).Int64())}
 }

@@ -21,7 +21,7 @@ var otherEndings = []string{".bz2", ".xz", ".zip", ".xls", ".xlsx", ".ods", ".fe
 
 // ReadFile reads the table in a file.
 //
-// It returns a *FileError when the file cannot be opened or is no CSV or TSV file, a *LayoutError when its rows or
+// It returns a *FileError when the file cannot be opened or is no table, a *LayoutError when its rows or
 // names are wrong, and a *CellError when a number cannot be read without a guess. Memory is that of the file and of
 // the columns: 8 bytes a number, 16 where decimals need them, 4 bytes and the distinct values for text.
 func ReadFile(path string) (*Table, error) { return ReadColumns(path, nil) }

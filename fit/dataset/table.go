@@ -1,6 +1,6 @@
-// Package dataset reads a table of a CSV or TSV file into typed columns.
+// Package dataset reads a table of a CSV, TSV (plain, gzip or zstd) or Parquet file into typed columns, or passes over it piece by piece.
 //
-// In goes a file, or a reader, whose first row names the columns. Out comes a Table: numbers with all the digits
+// In goes a file, or a reader, whose first row (or schema) names the columns. Out comes a Table: numbers with all the digits
 // that were written, text as codes of its distinct values, the missing cells and what stood there, and the line of
 // each row. The delimiter (comma, semicolon or tab) is found from the file, and so is a decimal comma where the
 // delimiter is not a comma. UTF-8 is read, and UTF-16 with a byte-order mark.

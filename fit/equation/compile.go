@@ -6,6 +6,7 @@ import (
 	"strings"
 
 	"modelmend/fit/doubledouble"
+	"modelmend/fit/figures"
 )
 
 // Truth is the outcome of a condition for a row.
@@ -220,7 +221,7 @@ func (k compiler) orderedSides(t *Test) (left, right operand, err error) {
 			return left, right, err
 		}
 		if sides[i].values == Texts {
-			return left, right, k.fail(s.Expr, "the text column "+shown(s.Expr.Text)+" beside "+t.Op, "a number", "compare text with = or != or in")
+			return left, right, k.fail(s.Expr, "the text column "+figures.Quoted(s.Expr.Text)+" beside "+t.Op, "a number", "compare text with = or != or in")
 		}
 	}
 	return sides[0], sides[1], nil
@@ -284,7 +285,7 @@ func (k compiler) side(s Side) (operand, error) {
 }
 
 func (k compiler) unknownColumn(e *Expr) *SyntaxError {
-	return k.fail(e, "the unknown column "+shown(e.Text), "a column of the data",
+	return k.fail(e, "the unknown column "+figures.Quoted(e.Text), "a column of the data",
 		"write a column name as in the header of the data; text values stand in quotes to the right of the comparison")
 }
 
@@ -314,7 +315,7 @@ func (k compiler) columnNumber(e *Expr) (func(int) doubledouble.Number, bool, er
 	case !known:
 		return nil, false, k.unknownColumn(e)
 	case a.Values == Texts:
-		return nil, false, k.fail(e, "the text column "+shown(e.Text)+" in arithmetic", "a numeric column", "compare text with = or != or in")
+		return nil, false, k.fail(e, "the text column "+figures.Quoted(e.Text)+" in arithmetic", "a numeric column", "compare text with = or != or in")
 	case a.Values == NoValues:
 		return func(int) doubledouble.Number { return doubledouble.From(math.NaN()) }, true, nil
 	}
@@ -373,14 +374,14 @@ func (k compiler) mixed(left, right operand) *SyntaxError {
 		if isNumberText(strings.TrimSpace(text.text)) {
 			advice = "write " + strings.TrimSpace(text.text) + " without quotes"
 		}
-		return k.fail(text.source.Expr, "the text "+shown(text.text), "a number, as "+shown(numberSource)+" is one", advice)
+		return k.fail(text.source.Expr, "the text "+figures.Quoted(text.text), "a number, as "+figures.Quoted(numberSource)+" is one", advice)
 	}
 	advice := "compare the column with a text in quotes"
 	if number.source.Expr.Kind == Number {
 		advice = "write " + quote(numberSource) + " in quotes"
 	}
-	return k.fail(number.source.Expr, "the number "+shown(numberSource),
-		"a text, as "+shown(text.source.Expr.Text)+" is a text column", advice)
+	return k.fail(number.source.Expr, "the number "+figures.Quoted(numberSource),
+		"a text, as "+figures.Quoted(text.source.Expr.Text)+" is a text column", advice)
 }
 
 // sameText tells whether two texts are the same, at least one of them a column.

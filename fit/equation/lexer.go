@@ -6,6 +6,7 @@ import (
 	"unicode/utf8"
 
 	"modelmend/fit/doubledouble"
+	"modelmend/fit/figures"
 )
 
 type tokenKind int
@@ -34,9 +35,9 @@ func (t token) found(source string) string {
 		return "the end"
 	}
 	if t.kind == quotedToken {
-		return shown(t.text)
+		return figures.Quoted(t.text)
 	}
-	return shown(source[t.pos:t.end])
+	return figures.Quoted(source[t.pos:t.end])
 }
 
 // lexer cuts text into tokens, one call of next at a time.
@@ -149,7 +150,7 @@ func (l *lexer) number() token {
 	digits := l.text[start:i]
 	value, err := doubledouble.Parse(digits)
 	if err != nil {
-		return l.bad(start, shown(digits), "a number below 1.8e308", "write a smaller number")
+		return l.bad(start, figures.Quoted(digits), "a number below 1.8e308", "write a smaller number")
 	}
 	return token{kind: numberToken, text: digits, value: value, pos: start, end: i}
 }
@@ -166,9 +167,9 @@ func (l *lexer) numberRunsOn(start, i int) token {
 	}
 	word := l.text[start:end]
 	if strings.HasPrefix(l.text[i:end], ".") {
-		return l.bad(start, shown(word), "a number with one point", "write one decimal point and no thousands separators")
+		return l.bad(start, figures.Quoted(word), "a number with one point", "write one decimal point and no thousands separators")
 	}
-	return l.bad(start, shown(word), "a number or a name that starts with a letter",
+	return l.bad(start, figures.Quoted(word), "a number or a name that starts with a letter",
 		"write "+digits+"*"+l.text[i:end]+" for a product, or \""+word+"\" in quotes if that is a column")
 }
 
@@ -192,7 +193,7 @@ func (l *lexer) sign() token {
 	rest := l.text[l.at:]
 	for _, w := range strangeSigns {
 		if strings.HasPrefix(rest, w.sign) && w.in.holds(l.condition) {
-			return l.bad(l.at, shown(w.sign), w.expected, w.advice)
+			return l.bad(l.at, figures.Quoted(w.sign), w.expected, w.advice)
 		}
 	}
 	signs := equationSigns
@@ -211,15 +212,15 @@ func (l *lexer) sign() token {
 	}
 	r, size := utf8.DecodeRuneInString(rest)
 	if r == '_' || r == '.' || unicode.IsDigit(r) || unicode.IsMark(r) {
-		return l.bad(l.at, shown(rest[:size]), "a name that starts with a letter", `write the name in quotes, as in "_area"`)
+		return l.bad(l.at, figures.Quoted(rest[:size]), "a name that starts with a letter", `write the name in quotes, as in "_area"`)
 	}
 	if r == '!' {
-		return l.bad(l.at, shown("!"), "a name, a number or a comparison", "write not before a condition and != for not equal")
+		return l.bad(l.at, figures.Quoted("!"), "a name, a number or a comparison", "write not before a condition and != for not equal")
 	}
 	if !unicode.IsPrint(r) {
 		return l.bad(l.at, "an invisible sign", "a visible one", "delete the sign")
 	}
-	return l.bad(l.at, shown(rest[:size]), "a name, a number or one of + * / ^ ( )",
+	return l.bad(l.at, figures.Quoted(rest[:size]), "a name, a number or one of + * / ^ ( )",
 		`write a column name that holds other signs in quotes, as in "floor area"`)
 }
 

@@ -8,6 +8,7 @@ import (
 	"unicode/utf8"
 
 	"modelmend/fit/doubledouble"
+	"modelmend/fit/figures"
 )
 
 // Parse reads an equation.
@@ -229,13 +230,13 @@ func (p *parser) startOfTerm() *SyntaxError {
 
 func (p *parser) checkDependent(e *Expr) *SyntaxError {
 	if len(e.Columns()) == 0 {
-		return p.fail(e.Pos, shown(p.lex.text[e.Pos:e.End]), "a dependent variable with a column in it", "write the dependent variable before the =")
+		return p.fail(e.Pos, figures.Quoted(p.lex.text[e.Pos:e.End]), "a dependent variable with a column in it", "write the dependent variable before the =")
 	}
 	return p.checkCategories(e, false)
 }
 
 func (p *parser) checkTerm(e, dependent *Expr, taken map[string]string) *SyntaxError {
-	source := shown(p.lex.text[e.Pos:e.End])
+	source := figures.Quoted(p.lex.text[e.Pos:e.End])
 	if len(e.Columns()) == 0 {
 		return p.fail(e.Pos, "the constant "+source, "a term with a column in it",
 			"delete it, the constant is in the model by itself; constant: false in the study leaves it out")
@@ -264,7 +265,7 @@ func (p *parser) checkCategories(e *Expr, whole bool) *SyntaxError {
 		if whole {
 			return nil
 		}
-		return p.fail(e.Pos, shown("categories"), "a number", "write categories(...) as a term of its own or as a factor of a product")
+		return p.fail(e.Pos, figures.Quoted("categories"), "a number", "write categories(...) as a term of its own or as a factor of a product")
 	}
 	for _, arg := range e.Args {
 		if err := p.checkCategories(arg, whole && e.Kind == Product); err != nil {
@@ -499,7 +500,7 @@ func (p *parser) call(name token) (*Expr, *SyntaxError) {
 		return nil, p.unknownFunction(name)
 	}
 	if name.text == "categories" && p.lex.condition {
-		return nil, p.fail(name.pos, shown(name.text), "a column or a number", "compare the column itself, as in district = \"North\"")
+		return nil, p.fail(name.pos, figures.Quoted(name.text), "a column or a number", "compare the column itself, as in district = \"North\"")
 	}
 	open := p.tok
 	if err := p.enter(open.pos); err != nil {
@@ -586,7 +587,7 @@ func (p *parser) baseLevel() (string, *SyntaxError) {
 func (p *parser) unknownFunction(name token) *SyntaxError {
 	const expected = "one of the functions ln, log10, sqrt, exp, abs, categories"
 	if slices.Contains(laterFunctions, name.text) {
-		return p.fail(name.pos, shown(name.text), expected,
+		return p.fail(name.pos, figures.Quoted(name.text), expected,
 			name.text+" is not available in this version, because it needs time and unit keys; add the column to the data instead")
 	}
 	advice := fmt.Sprintf("write %s*(...) for a product", name.text)
@@ -598,7 +599,7 @@ func (p *parser) unknownFunction(name token) *SyntaxError {
 	if p.lex.condition && (strings.EqualFold(name.text, "and") || strings.EqualFold(name.text, "or") || strings.EqualFold(name.text, "not")) {
 		advice = "write " + strings.ToLower(name.text) + " in small letters"
 	}
-	return p.fail(name.pos, "the unknown function "+shown(name.text), expected, advice)
+	return p.fail(name.pos, "the unknown function "+figures.Quoted(name.text), expected, advice)
 }
 
 // isNumberText reports whether s can stand without quotes as a base level.

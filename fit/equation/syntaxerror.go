@@ -92,11 +92,3 @@ func displayWidth(r rune) int {
 	}
 	return 1
 }
-
-// shown quotes what the user wrote for a message and cuts it at 60 signs.
-func shown(s string) string {
-	if utf8.RuneCountInString(s) > 60 {
-		s = string([]rune(s)[:57]) + "..."
-	}
-	return fmt.Sprintf("%q", s)
-}

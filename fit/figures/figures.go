@@ -1,12 +1,13 @@
-// Package figures prints numbers for prose.
+// Package figures prints numbers, and texts that the user wrote, for prose.
 //
-// A number and a count of significant digits go in, text comes out. It refuses nothing: what is not a finite number is said in words. It stands
-// first in the flow and imports nothing of the project.
+// A number and a count of significant digits go in, or a text; text comes out. It refuses nothing: what is not a finite number is said in words.
+// It stands first in the flow and imports nothing of the project.
 package figures
 
 import (
 	"math"
 	"strconv"
+	"unicode/utf8"
 )
 
 // Short prints v with so many significant digits and no trailing zeros: 0.05, 12300, 1.2e-09.
@@ -52,4 +53,23 @@ func unusual(v float64) (string, bool) {
 func plain(v float64) bool {
 	a := math.Abs(v)
 	return v == 0 || (a >= 1e-6 && a < 1e9)
+}
+
+// Percent prints a share with one decimal, three where it is nearly but not quite the whole: 99.981 %.
+func Percent(share float64) string {
+	if text, ok := unusual(share); ok {
+		return text
+	}
+	if share > 0.9995 && share < 1 {
+		return strconv.FormatFloat(math.Min(99.999, 100*share), 'f', 3, 64) + " %"
+	}
+	return strconv.FormatFloat(100*share, 'f', 1, 64) + " %"
+}
+
+// Quoted quotes what the user or a file wrote for a message and cuts it at 60 signs.
+func Quoted(s string) string {
+	if utf8.RuneCountInString(s) > 60 {
+		s = string([]rune(s)[:57]) + "..."
+	}
+	return strconv.Quote(s)
 }

@@ -2,6 +2,7 @@ package figures
 
 import (
 	"math"
+	"strings"
 	"testing"
 )
 
@@ -20,6 +21,20 @@ func TestFigures(t *testing.T) {
 		}
 		if got := Fixed(c.v, c.digits); got != c.fixed {
 			t.Errorf("Fixed(%v, %d) = %q, want %q", c.v, c.digits, got, c.fixed)
+		}
+	}
+}
+
+func TestPercentAndQuoted(t *testing.T) {
+	for v, want := range map[float64]string{0: "0.0 %", 0.123: "12.3 %", 0.99981: "99.981 %", 0.9999999: "99.999 %", 1: "100.0 %", math.NaN(): "not available"} {
+		if got := Percent(v); got != want {
+			t.Errorf("Percent(%v) = %q, want %q", v, got, want)
+		}
+	}
+	long := strings.Repeat("ä", 61)
+	for s, want := range map[string]string{"a\"b\n": `"a\"b\n"`, long: `"` + long[:2*57] + `..."`} {
+		if got := Quoted(s); got != want {
+			t.Errorf("Quoted(%q) = %s, want %s", s, got, want)
 		}
 	}
 }

@@ -7,6 +7,7 @@ import (
 	"strconv"
 	"strings"
 
+	"modelmend/fit/figures"
 	"modelmend/web-output/view"
 )
 
@@ -320,13 +321,10 @@ var functions = template.FuncMap{
 	"fig":  func(v float64) string { return Figure(v, 3) },
 	"num4": func(v view.Num) string { return Figure(float64(v), 4) },
 	"percent": func(v view.Num) string {
-		switch {
-		case v.IsNone():
+		if v.IsNone() {
 			return "–"
-		case v > 0.9995 && v < 1:
-			return strconv.FormatFloat(math.Min(99.999, 100*float64(v)), 'f', 3, 64) + " %"
 		}
-		return strconv.FormatFloat(100*float64(v), 'f', 1, 64) + " %"
+		return figures.Percent(float64(v))
 	},
 	"factor": func(v view.Num, reason string) string {
 		if v.IsNone() && reason != "" {
@@ -334,23 +332,8 @@ var functions = template.FuncMap{
 		}
 		return Figure(float64(v), 3)
 	},
-	"coefOf": func(a view.Alternative, i int) view.Coefficient { return a.Coefficients[i] },
-	"seq": func(n int) []int {
-		out := make([]int, n)
-		for i := range out {
-			out[i] = i
-		}
-		return out
-	},
-	"same":  func(a, b string) bool { return a == b },
-	"inc":   func(i int) int { return i + 1 },
-	"words": func(s []string) string { return strings.Join(s, ", ") },
-	"shade": func(v view.Num) string {
-		if v.IsNone() {
-			return "0"
-		}
-		return strconv.FormatFloat(math.Round(100*math.Abs(float64(v)))/100, 'f', 2, 64)
-	},
+	"coefOf":   func(a view.Alternative, i int) view.Coefficient { return a.Coefficients[i] },
+	"words":    func(s []string) string { return strings.Join(s, ", ") },
 	"none":     func(v view.Num) bool { return v.IsNone() },
 	"sentence": func(s string) string { return strings.ToUpper(s[:min(1, len(s))]) + s[min(1, len(s)):] },
 	"plain":    func(v view.Num) string { return strconv.FormatFloat(float64(v), 'f', -1, 64) },
