@@ -1,4 +1,4 @@
-// Package tail gives tail probabilities and quantiles of t, F, chi-square and the normal law that stay right far out.
+// Package tail gives tail probabilities and quantiles of t and F that stay right far out.
 //
 // Numbers go in, probabilities come out; nothing is computed as one minus a distribution function, so a
 // probability of 1e-60 keeps its digits. It stands first in the flow and imports nothing of the project.
@@ -44,9 +44,6 @@ func F(f, d1, d2 float64) float64 {
 	}
 	return mathext.RegIncBeta(d2/2, d1/2, d2/(d2+d1*f))
 }
-
-// Normal returns the upper tail probability P(Z > z) of the standard normal law.
-func Normal(z float64) float64 { return 0.5 * math.Erfc(z/math.Sqrt2) }
 
 // TQuantile returns the t such that P(|T| <= t) = level with df degrees of freedom, 0 < level < 1: the factor of a
 // two-sided interval. It is NaN for df <= 0. It is found by bisection and Newton steps on T, to 14 digits.
