@@ -6,6 +6,7 @@ import (
 	"runtime"
 	"sync"
 
+	"modelmend/fit/collinear"
 	"modelmend/fit/linear"
 	"modelmend/fit/reduction"
 	"modelmend/fit/tail"
@@ -245,7 +246,7 @@ func (c *Comparison) alternative(ch choice, final remedy.Training) *Alternative 
 		}
 	}
 	a.R2 = 1 - a.RSS/sample.YY.Float()
-	f := &remedy.Final{Problem: c.Problem, Fitted: a.Fitted, RSS: a.RSS, AsIs: c.AsIs, S: c.S, DF: c.DF, Constant: c.AsIs.Constant(sample)}
+	f := &remedy.Final{Problem: c.Problem, Fitted: a.Fitted, RSS: a.RSS, AsIs: c.AsIs, S: c.S, DF: c.DF}
 	a.Description = ch.variant.Describe(f)
 	c.state(a)
 	return a
@@ -332,7 +333,7 @@ func (c *Comparison) constantTouched(status []remedy.Status) bool {
 		return false
 	}
 	for _, d := range c.Diagnosis.Dependencies {
-		if d.Kind != "exact" || d.Constant == 0 {
+		if d.Kind != collinear.Exact || d.Constant == 0 {
 			continue
 		}
 		for _, j := range d.Members() {

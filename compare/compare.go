@@ -67,7 +67,7 @@ func Check(ctx context.Context, t *dataset.Table, study *Study, opt Options) (*C
 
 // Run diagnoses and fits every alternative. The result does not depend on Options.
 //
-// Cost: one pass over the rows a repeat, then per split and variant O(p^3).
+// Cost: one pass over the rows (one a repeat up to folds.Exact rows), then per split and variant O(p^3).
 func Run(ctx context.Context, t *dataset.Table, study *Study, opt Options) (*Comparison, error) {
 	c, red, err := prepare(ctx, t, study, opt, true)
 	if err != nil {
@@ -180,7 +180,7 @@ func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, o
 		in.Decimals = append(in.Decimals, r.Decimals)
 	}
 	for _, t := range d.Terms {
-		in.Groups = append(in.Groups, collinear.Group{Name: t.Name, Columns: t.Columns, Category: t.Category, Products: t.Products})
+		in.Groups = append(in.Groups, collinear.Group{Name: t.Name, Columns: t.Columns, Category: t.Category})
 	}
 	cr, err := c.centered(opt)
 	if err != nil {

@@ -3,6 +3,7 @@ package compare
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"modelmend/fit/figures"
 	"modelmend/fit/tail"
@@ -30,7 +31,7 @@ type LedgerEntry struct {
 func (c *Comparison) ledger() {
 	order := append([]int{}, c.Focal...)
 	for j := range c.Problem.Names {
-		if !contains(c.Focal, j) {
+		if !slices.Contains(c.Focal, j) {
 			order = append(order, j)
 		}
 	}
@@ -39,20 +40,11 @@ func (c *Comparison) ledger() {
 	}
 }
 
-func contains(set []int, j int) bool {
-	for _, i := range set {
-		if i == j {
-			return true
-		}
-	}
-	return false
-}
-
 func (c *Comparison) entry(j int) LedgerEntry {
 	nan := math.NaN()
 	s := c.Problem.Sample
 	name := c.Problem.Names[j]
-	e := LedgerEntry{Column: j, Focal: contains(c.Focal, j), Estimate: c.AsIs.Slopes[j], S: c.S, OwnSD: s.SD(j), VIF: c.Diagnosis.VIF[j], Rows: s.N,
+	e := LedgerEntry{Column: j, Focal: slices.Contains(c.Focal, j), Estimate: c.AsIs.Slopes[j], S: c.S, OwnSD: s.SD(j), VIF: c.Diagnosis.VIF[j], Rows: s.N,
 		SE: nan, SEUntangled: nan, Low: nan, High: nan, LowUntangled: nan, HighUntangled: nan, SmallestEffect: c.Smallest[j]}
 	if c.AsIs.NotIdentified != nil && c.AsIs.NotIdentified[j] {
 		e.Estimate = nan

@@ -159,8 +159,7 @@ func (c *Comparison) centered(opt Options) (*reduction.Reduction, error) {
 		return nil, nil
 	}
 	if !d.Streamed() {
-		cols, _ := d.Centered()
-		return reduction.Reduce(cols, d.Y, d.Constant, reduction.Split{}, opt.Workers)
+		return reduction.Reduce(d.Centered(), d.Y, d.Constant, reduction.Split{}, opt.Workers)
 	}
 	acc := reduction.NewAccumulator(len(d.Regressors), d.Constant, 1)
 	err := d.PassCentered(func(cols []reduction.Column, lines []int) error {

@@ -157,7 +157,7 @@ func conform(t *testing.T, p *remedy.Problem, tr remedy.Training, red *reduction
 	}
 	as := tr.Sample.LeastSquares(true)
 	s := math.Sqrt(as.RSS / 53)
-	final := &remedy.Final{Problem: p, Fitted: f, RSS: tr.Sample.RSS(f.Slopes), AsIs: as, S: s, DF: 53, Constant: as.Constant(tr.Sample)}
+	final := &remedy.Final{Problem: p, Fitted: f, RSS: tr.Sample.RSS(f.Slopes), AsIs: as, S: s, DF: 53}
 	d := v.Describe(final)
 	if len(d.Meaning) == 0 {
 		t.Errorf("%s: says nothing of what coefficients mean", v.Key)

@@ -182,13 +182,12 @@ type Component struct {
 
 // Final is what Describe sees.
 type Final struct {
-	Problem  *Problem
-	Fitted   *Fitted
-	RSS      float64 // of this fit on all rows
-	AsIs     *linear.Fit
-	Constant float64 // of the model left alone
-	S        float64 // residual standard deviation of the model left alone, NaN where it has no degrees of freedom
-	DF       float64 // its residual degrees of freedom
+	Problem *Problem
+	Fitted  *Fitted
+	RSS     float64 // of this fit on all rows
+	AsIs    *linear.Fit
+	S       float64 // residual standard deviation of the model left alone, NaN where it has no degrees of freedom
+	DF      float64 // its residual degrees of freedom
 }
 
 // Description is what the fit imposes and means.

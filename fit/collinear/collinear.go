@@ -9,6 +9,7 @@ package collinear
 import (
 	"fmt"
 	"math"
+	"slices"
 	"sort"
 	"strings"
 
@@ -60,7 +61,6 @@ type Group struct {
 	Name     string
 	Columns  []int
 	Category bool // the dummies of one category
-	Products bool // holds powers or products
 }
 
 // Report is the diagnosis.
@@ -222,7 +222,7 @@ func involved(raw, centered *linear.Sample, c Cutoffs, constant bool) []int {
 func intersect(a, b []int) []int {
 	var out []int
 	for _, j := range a {
-		if contains(b, j) {
+		if slices.Contains(b, j) {
 			out = append(out, j)
 		}
 	}
@@ -295,7 +295,7 @@ func reasons(in Input, r *Report) []Reason {
 	if len(inv) >= 2 && len(still) < len(inv) {
 		var rest []int
 		for _, j := range inv {
-			if len(still) < 2 || !contains(still, j) {
+			if len(still) < 2 || !slices.Contains(still, j) {
 				rest = append(rest, j)
 			}
 		}

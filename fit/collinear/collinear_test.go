@@ -40,14 +40,14 @@ func diagnose(t *testing.T, table *dataset.Table, eq string, opt design.Options)
 	}
 	in := collinear.Input{Names: d.Names(), Each: d.Each, Cutoffs: collinear.DefaultCutoffs()}
 	in.Sample, in.Raw = reduce(d.Columns())
-	if cols, differ := d.Centered(); differ && d.Constant {
-		in.Centered, in.CenteredRaw = reduce(cols)
+	if d.HasProducts() && d.Constant {
+		in.Centered, in.CenteredRaw = reduce(d.Centered())
 	}
 	for _, r := range d.Regressors {
 		in.Decimals = append(in.Decimals, r.Decimals)
 	}
 	for _, g := range d.Terms {
-		in.Groups = append(in.Groups, collinear.Group{Name: g.Name, Columns: g.Columns, Category: g.Category, Products: g.Products})
+		in.Groups = append(in.Groups, collinear.Group{Name: g.Name, Columns: g.Columns, Category: g.Category})
 	}
 	return d, collinear.Diagnose(in)
 }

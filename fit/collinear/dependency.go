@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -178,7 +179,7 @@ func smallestSubset(s *linear.Sample, left int, rest []int, enough float64) []in
 	for len(cols) < m {
 		best, bestR2 := -1, -1.0
 		for _, j := range rest {
-			if contains(cols, j) {
+			if slices.Contains(cols, j) {
 				continue
 			}
 			if _, _, r2 := s.Auxiliary(left, append(append([]int{}, cols...), j)); r2 > bestR2 {
@@ -192,15 +193,6 @@ func smallestSubset(s *linear.Sample, left int, rest []int, enough float64) []in
 	}
 	sort.Ints(cols)
 	return cols
-}
-
-func contains(set []int, j int) bool {
-	for _, i := range set {
-		if i == j {
-			return true
-		}
-	}
-	return false
 }
 
 func choose(n, k int) int {
@@ -331,18 +323,11 @@ func count(in Input, d Dependency, tolerance float64) (Dependency, bool) {
 
 // remainder returns x_left - sum c*x in one row, and the largest size of what is added up.
 func remainder(cols []reduction.Column, d Dependency, row int) (rest, size float64) {
-	value := func(j int) doubledouble.Number {
-		v := doubledouble.From(cols[j].Hi[row])
-		if cols[j].Lo != nil {
-			v.Lo = cols[j].Lo[row]
-		}
-		return v
-	}
-	v := value(d.Left)
+	v := cols[d.Left].At(row)
 	size = math.Abs(v.Hi)
 	for k, j := range d.Columns {
 		// 0.1 and its multiples are meant as decimals.
-		t := value(j).Mul(decimalNumber(d.Coefficients[k]))
+		t := cols[j].At(row).Mul(decimalNumber(d.Coefficients[k]))
 		size = math.Max(size, math.Abs(t.Hi))
 		v = v.Sub(t)
 	}

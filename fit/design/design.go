@@ -57,7 +57,6 @@ type Term struct {
 	Name     string
 	Columns  []int
 	Category bool
-	Products bool // holds a power or product
 }
 
 // SetAside counts rows left out for one reason.
@@ -168,29 +167,10 @@ type builder struct {
 	eq      *equation.Equation
 	reason  []int // 0: used; else 1 + place in reasons
 	reasons []SetAside
-	y       vector
+	y       reduction.Column
 	terms   []termVectors
-	atoms   map[string]vector
+	atoms   map[string]reduction.Column
 	step    int // of the search for reasons, the same for the same equation
-}
-
-type vector struct{ hi, lo []float64 }
-
-func (v vector) at(i int) doubledouble.Number {
-	if v.lo == nil {
-		return doubledouble.From(v.hi[i])
-	}
-	return doubledouble.Number{Hi: v.hi[i], Lo: v.lo[i]}
-}
-
-func (v *vector) set(i int, x doubledouble.Number) {
-	v.hi[i] = x.Hi
-	if x.Lo != 0 && v.lo == nil {
-		v.lo = make([]float64, len(v.hi))
-	}
-	if v.lo != nil {
-		v.lo[i] = x.Lo
-	}
 }
 
 type termVectors struct {
@@ -199,7 +179,7 @@ type termVectors struct {
 	levels   []string
 	base     string
 	baseRows int
-	values   vector
+	values   reduction.Column
 }
 
 func (b *builder) checkColumns() error {
@@ -289,7 +269,7 @@ func (b *builder) setAside(row int, reason, column string) {
 }
 
 func (b *builder) evaluate() error {
-	b.atoms = map[string]vector{}
+	b.atoms = map[string]reduction.Column{}
 	b.missing()
 	var err error
 	if b.y, err = b.eval(b.eq.Dependent); err != nil {
@@ -445,18 +425,18 @@ func describeSetAside(reasons []SetAside) string {
 	return out
 }
 
-func (b *builder) cut(v vector, index []int) reduction.Column {
-	if len(index) == len(v.hi) {
-		return reduction.Column{Hi: v.hi, Lo: v.lo}
+func (b *builder) cut(v reduction.Column, index []int) reduction.Column {
+	if len(index) == len(v.Hi) {
+		return v
 	}
 	c := reduction.Column{Hi: make([]float64, len(index))}
-	if v.lo != nil {
+	if v.Lo != nil {
 		c.Lo = make([]float64, len(index))
 	}
 	for i, row := range index {
-		c.Hi[i] = v.hi[row]
-		if v.lo != nil {
-			c.Lo[i] = v.lo[row]
+		c.Hi[i] = v.Hi[row]
+		if v.Lo != nil {
+			c.Lo[i] = v.Lo[row]
 		}
 	}
 	return c
@@ -619,11 +599,7 @@ func groupTerms(d *Design) []Term {
 		}
 		t := &terms[k]
 		t.Columns = append(t.Columns, j)
-		r := &d.Regressors[j]
-		r.Term = k
-		if r.degree() > 1 {
-			t.Products = true
-		}
+		d.Regressors[j].Term = k
 	}
 	for k := range terms {
 		t := &terms[k]
@@ -651,13 +627,7 @@ func groupTerms(d *Design) []Term {
 	return terms
 }
 
-func (r *Regressor) degree() int {
-	d := 0
-	for _, f := range r.Factors {
-		d += f.Power
-	}
-	return d
-}
+func (r *Regressor) degree() int { return degreeOf(r.Factors) }
 
 func smallCells(hidden int, category string) Note {
 	return Note{"small-cells", fmt.Sprintf("%d levels of %s hold fewer than %d rows and are not named; --show-small-cells names them, if your data custodian allows", hidden, category, SmallCell)}

@@ -13,42 +13,42 @@ import (
 
 // eval computes an expression for every row that is still used; rows where it has no value are set aside with the
 // reason.
-func (b *builder) eval(e *equation.Expr) (vector, error) {
+func (b *builder) eval(e *equation.Expr) (reduction.Column, error) {
 	b.step++
 	n := b.table.Rows
 	switch e.Kind {
 	case equation.Name:
 		c, _ := b.table.Column(e.Text)
-		v := vector{hi: c.Hi, lo: c.Lo}
+		v := reduction.Column{Hi: c.Hi, Lo: c.Lo}
 		b.remember(e, v)
 		return v, nil
 	case equation.Number:
-		v := vector{hi: make([]float64, n)}
+		v := reduction.Column{Hi: make([]float64, n)}
 		for i := range n {
-			v.set(i, e.Value)
+			v.Set(i, e.Value)
 		}
 		return v, nil
 	}
-	args := make([]vector, len(e.Args))
+	args := make([]reduction.Column, len(e.Args))
 	for k, a := range e.Args {
 		var err error
 		if args[k], err = b.eval(a); err != nil {
-			return vector{}, err
+			return reduction.Column{}, err
 		}
 	}
 	op, err := b.operation(e)
 	if err != nil {
-		return vector{}, err
+		return reduction.Column{}, err
 	}
-	out := vector{hi: make([]float64, n)}
+	out := reduction.Column{Hi: make([]float64, n)}
 	in := make([]doubledouble.Number, len(args))
 	for i := range n {
 		if b.reason[i] != 0 {
-			out.hi[i] = math.NaN()
+			out.Hi[i] = math.NaN()
 			continue
 		}
 		for k := range args {
-			in[k] = args[k].at(i)
+			in[k] = args[k].At(i)
 		}
 		v, bad := op(in)
 		if bad == "" && isBad(v) {
@@ -56,17 +56,17 @@ func (b *builder) eval(e *equation.Expr) (vector, error) {
 		}
 		if bad != "" {
 			b.setAside(i, bad, firstColumn(e))
-			out.hi[i] = math.NaN()
+			out.Hi[i] = math.NaN()
 			continue
 		}
-		out.set(i, v)
+		out.Set(i, v)
 	}
 	b.remember(e, out)
 	return out, nil
 }
 
 // remember keeps the values of atoms, so that powers and products can be formed again about the means.
-func (b *builder) remember(e *equation.Expr, v vector) {
+func (b *builder) remember(e *equation.Expr, v reduction.Column) {
 	if e.Kind != equation.Product && e.Kind != equation.Power {
 		b.atoms[e.String()] = v
 	} else if hasNumber(e) {
@@ -186,45 +186,48 @@ func (b *builder) sample(cond *equation.Condition) error {
 func levelOf(v float64) string { return strconv.FormatFloat(v, 'f', -1, 64) }
 
 // Centered returns the regressors with every variable of a power or product centred at its mean over the used rows before it
-// is multiplied, and whether that differs from the regressors as written.
-func (d *Design) Centered() ([]reduction.Column, bool) {
-	entering := map[string]bool{}
-	for _, r := range d.Regressors {
-		if r.degree() > 1 {
-			for _, f := range r.Factors {
-				entering[f.Atom] = true
-			}
-		}
-	}
+// is multiplied.
+func (d *Design) Centered() []reduction.Column {
+	means := map[string]doubledouble.Number{}
 	out := make([]reduction.Column, len(d.Regressors))
 	for j, r := range d.Regressors {
 		out[j] = r.Values
 		if r.degree() < 2 {
 			continue
 		}
-		v := vector{hi: make([]float64, d.Rows)}
-		for i := range v.hi {
-			v.hi[i] = 1
-		}
 		for _, f := range r.Factors {
-			atom := d.atoms[f.Atom]
-			a := vector{hi: atom.Hi, lo: atom.Lo}
-			mean := meanOf(a)
-			for i := range d.Rows {
-				v.set(i, v.at(i).Mul(a.at(i).Sub(mean).Power(f.Power)))
+			if _, known := means[f.Atom]; !known {
+				means[f.Atom] = meanOf(d.atoms[f.Atom])
 			}
 		}
-		out[j] = reduction.Column{Hi: v.hi, Lo: v.lo}
+		out[j] = about(r.Factors, d.atoms, means, make([]int, d.Rows))
 	}
-	return out, len(entering) > 0
+	return out
 }
 
-func meanOf(v vector) doubledouble.Number {
-	var sum doubledouble.Number
-	for i := range v.hi {
-		sum = sum.Add(v.at(i))
+// about forms a product of atoms about their means in the rows that are used, those with reason 0; the others hold 1.
+func about(factors []Factor, atoms map[string]reduction.Column, means map[string]doubledouble.Number, reason []int) reduction.Column {
+	v := reduction.Column{Hi: make([]float64, len(reason))}
+	for i := range v.Hi {
+		v.Hi[i] = 1
 	}
-	return sum.Div(doubledouble.From(float64(len(v.hi))))
+	for _, f := range factors {
+		a, mean := atoms[f.Atom], means[f.Atom]
+		for i, r := range reason {
+			if r == 0 {
+				v.Set(i, v.At(i).Mul(a.At(i).Sub(mean).Power(f.Power)))
+			}
+		}
+	}
+	return v
+}
+
+func meanOf(v reduction.Column) doubledouble.Number {
+	var sum doubledouble.Number
+	for i := range v.Hi {
+		sum = sum.Add(v.At(i))
+	}
+	return sum.Div(doubledouble.From(float64(len(v.Hi))))
 }
 
 // Effect returns the derivative of every regressor with respect to the raw column variable, all raw columns at their

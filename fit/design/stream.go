@@ -134,7 +134,7 @@ func (d *Design) pass(shift map[string]doubledouble.Number, yield func(cols []re
 
 // evaluateStream computes the dependent variable and the number terms of a piece.
 func (b *builder) evaluateStream(terms []sourceTerm) (err error) {
-	b.atoms = map[string]vector{}
+	b.atoms = map[string]reduction.Column{}
 	b.missing()
 	if b.y, err = b.eval(b.eq.Dependent); err != nil {
 		return err
@@ -159,7 +159,7 @@ func (b *builder) addSums(sums map[string]doubledouble.Number, wanted map[string
 		}
 		sum := sums[name]
 		for _, i := range index {
-			sum = sum.Add(v.at(i))
+			sum = sum.Add(v.At(i))
 		}
 		sums[name] = sum
 	}
@@ -211,7 +211,7 @@ func (d *Design) columns(b *builder, index []int, shift map[string]doubledouble.
 		}
 		values := t.values
 		if factors := factorsOf(st.expr); shift != nil && degreeOf(factors) > 1 {
-			values = b.centered(factors, shift)
+			values = about(factors, b.atoms, shift, b.reason)
 		}
 		all = append(all, b.cut(values, index))
 	}
@@ -231,23 +231,6 @@ func degreeOf(factors []Factor) int {
 		n += f.Power
 	}
 	return n
-}
-
-// centered forms a product of atoms about their means.
-func (b *builder) centered(factors []Factor, shift map[string]doubledouble.Number) vector {
-	v := vector{hi: make([]float64, b.table.Rows)}
-	for i := range v.hi {
-		v.hi[i] = 1
-	}
-	for _, f := range factors {
-		a := b.atoms[f.Atom]
-		for i := range v.hi {
-			if b.reason[i] == 0 {
-				v.set(i, v.at(i).Mul(a.at(i).Sub(shift[f.Atom]).Power(f.Power)))
-			}
-		}
-	}
-	return v
 }
 
 // Settle finishes a streamed design after its first pass, given how many rows every provisional regressor is not zero in: bases are chosen, levels

@@ -47,8 +47,8 @@ const Block = 4 * Groups
 // MostFolds is the number of folds up to which a large split is dealt in cells.
 const MostFolds = Groups / 2
 
-// NewRandom splits n rows into count balanced folds, repeats times; celled allows the rows of a large table to be dealt in cells. The same n, count, repeats and seed give the same plan;
-// fold sizes differ by at most one a chunk.
+// NewRandom splits n rows into count balanced folds, repeats times; celled allows the rows of a large table to be dealt in cells. The same n, count, repeats and seed give the same plan.
+// Fold sizes differ by at most one row, where rows are dealt in cells by about one cell (a thousandth of the rows).
 //
 // It returns an error when count < 2, repeats < 1 or n < count.
 func NewRandom(n, count, repeats int, seed int64, celled bool) (*Plan, error) {

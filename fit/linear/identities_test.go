@@ -149,7 +149,7 @@ func TestRidgeIdentities(t *testing.T) {
 			near(t, "two ways to the ridge map", m[i], w[i], 1e-9)
 		}
 		for i, v := range sp.RidgeSampling(k) {
-			near(t, "W S W", v, s.Sandwich(w)[i], 1e-8)
+			near(t, "W S W", v, s.sandwich(w)[i].Float(), 1e-8)
 		}
 		// Sparing a regressor: the same as the direct solution.
 		spared := s.Spectrum([]int{2}).RidgeSlopes(k)

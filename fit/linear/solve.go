@@ -556,10 +556,8 @@ func (s *Sample) PenalizedInverse(penalty float64, spare []int) []float64 {
 	return floats(unscale(f.inverse(), scale))
 }
 
-// Sandwich returns M S M' (p x p row-major): the covariance over sigma^2 of slopes = M X'y with independent errors of
-// equal variance. Cost O(p^3) in double-double.
-func (s *Sample) Sandwich(m []float64) []float64 { return floats(s.sandwich(m)) }
-
+// sandwich returns M S M' (p x p row-major): the covariance over sigma^2 of slopes = M X'y with independent errors of
+// equal variance. Cost O(p^3).
 func (s *Sample) sandwich(m []float64) []number {
 	p := s.P
 	ms := make([]number, p*p)

@@ -17,6 +17,25 @@ import (
 // Column is one column of numbers as high and low parts; Lo may be nil where every digit fits into Hi.
 type Column struct{ Hi, Lo []float64 }
 
+// At returns the number in a row, counted from 0.
+func (c Column) At(row int) doubledouble.Number {
+	if c.Lo == nil {
+		return doubledouble.From(c.Hi[row])
+	}
+	return doubledouble.Number{Hi: c.Hi[row], Lo: c.Lo[row]}
+}
+
+// Set puts a number into a row and makes room for low parts at the first one that is not zero.
+func (c *Column) Set(row int, v doubledouble.Number) {
+	c.Hi[row] = v.Hi
+	if v.Lo != 0 && c.Lo == nil {
+		c.Lo = make([]float64, len(c.Hi))
+	}
+	if c.Lo != nil {
+		c.Lo[row] = v.Lo
+	}
+}
+
 // Moments holds n, the sums and the cross-products of q columns about an origin: the entry (i,j), i <= j, of the
 // packed upper triangle is the sum over rows of (z_i - o_i)(z_j - o_j).
 type Moments struct {
@@ -224,11 +243,16 @@ func Reduce(x []Column, y Column, constant bool, split Split, workers int) (*Red
 			red.Parts = append(red.Parts, sums(cols, red.Origin, of, split.Counts[r], workers))
 		}
 	}
-	red.Total = red.Parts[0][0]
-	for _, part := range red.Parts[0][1:] {
-		red.Total = red.Total.Plus(part)
-	}
+	red.addUp()
 	return red, nil
+}
+
+// addUp forms the total of the parts of the first repeat.
+func (r *Reduction) addUp() {
+	r.Total = r.Parts[0][0]
+	for _, part := range r.Parts[0][1:] {
+		r.Total = r.Total.Plus(part)
+	}
 }
 
 // gather adds the moments of cells into folds.
@@ -360,10 +384,7 @@ func (a *Accumulator) Finish(fold [][]int32, counts []int) *Reduction {
 	for r, f := range fold {
 		a.red.Parts = append(a.red.Parts, gather(a.cells, f, counts[r]))
 	}
-	a.red.Total = a.red.Parts[0][0]
-	for _, part := range a.red.Parts[0][1:] {
-		a.red.Total = a.red.Total.Plus(part)
-	}
+	a.red.addUp()
 	return a.red
 }
 
