@@ -3,11 +3,11 @@ package compare
 import (
 	"context"
 	"math"
-	"runtime"
 	"sync"
 
 	"modelmend/fit/collinear"
 	"modelmend/fit/linear"
+	"modelmend/fit/parallel"
 	"modelmend/fit/reduction"
 	"modelmend/fit/tail"
 	"modelmend/remedy"
@@ -100,29 +100,14 @@ func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choic
 	return nil
 }
 
-// each runs f for 0..n-1 on so many workers; it stops handing out work once ctx is done.
+// each runs f for 0..n-1 on so many workers; what has not begun once ctx is done is left.
 func each(ctx context.Context, n, workers int, f func(i int)) error {
-	next := make(chan int)
-	var wg sync.WaitGroup
-	for range max(1, workers) {
-		wg.Add(1)
-		go func() {
-			defer wg.Done()
-			for i := range next {
-				f(i)
-			}
-		}()
-	}
-	var err error
-	for i := range n {
-		if err = ctx.Err(); err != nil {
-			break
+	parallel.Each(n, workers, func(i int) {
+		if ctx.Err() == nil {
+			f(i)
 		}
-		next <- i
-	}
-	close(next)
-	wg.Wait()
-	return err
+	})
+	return ctx.Err()
 }
 
 // outOfSample learns every variant on the training rows of every fold and predicts the held-out ones. The inner folds of an outer
@@ -522,7 +507,7 @@ func (c *Comparison) Path(a *Alternative) []PathPoint {
 		return nil
 	}
 	out := make([]PathPoint, len(t.Values))
-	each(context.Background(), len(t.Values), runtime.GOMAXPROCS(0), func(i int) {
+	parallel.Each(len(t.Values), 0, func(i int) {
 		f := &remedy.Fitted{Slopes: t.Slopes[i], Factor: t.Factor(i)}
 		if t.Cross != nil {
 			f.Cross = t.Cross(i)

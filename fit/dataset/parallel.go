@@ -1,9 +1,9 @@
 package dataset
 
 import (
-	"runtime"
 	"strings"
-	"sync"
+
+	"modelmend/fit/parallel"
 )
 
 // Text without quotes is cut at line ends into pieces of about this size, which are read side by side. A piece does not depend on the number
@@ -54,7 +54,7 @@ func loneReturn(s string) bool {
 // sideBySide reads pieces on all cores and joins them in order. The first error in file order is the one returned.
 func (r *reading) sideBySide(pieces []*reading) error {
 	errs := make([]error, len(pieces))
-	each(len(pieces), func(i int) {
+	parallel.Each(len(pieces), 0, func(i int) {
 		errs[i] = pieces[i].plainRows(pieces[i].firstLine)
 	})
 	for _, err := range errs {
@@ -75,27 +75,8 @@ func (r *reading) sideBySide(pieces []*reading) error {
 	for _, p := range pieces {
 		r.table.Lines = append(r.table.Lines, p.table.Lines...)
 	}
-	each(len(r.builders), func(j int) { r.join(j, pieces) })
+	parallel.Each(len(r.builders), 0, func(j int) { r.join(j, pieces) })
 	return nil
-}
-
-func each(n int, f func(i int)) {
-	next := make(chan int)
-	var wg sync.WaitGroup
-	for range min(n, runtime.GOMAXPROCS(0)) {
-		wg.Add(1)
-		go func() {
-			defer wg.Done()
-			for i := range next {
-				f(i)
-			}
-		}()
-	}
-	for i := range n {
-		next <- i
-	}
-	close(next)
-	wg.Wait()
 }
 
 // join makes one column of the pieces' columns.

@@ -9,9 +9,9 @@ package reduction
 import (
 	"fmt"
 	"math"
-	"sync"
 
 	"modelmend/fit/doubledouble"
+	"modelmend/fit/parallel"
 )
 
 // Column is one column of numbers as high and low parts; Lo may be nil where every digit fits into Hi.
@@ -290,15 +290,7 @@ func sums(cols []Column, origin []doubledouble.Number, of []int32, parts, worker
 // share adds rows to the moments of their parts, every workers-th part in one worker.
 func share(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, workers int) {
 	workers = max(1, min(workers, len(out)))
-	var wg sync.WaitGroup
-	for w := range workers {
-		wg.Add(1)
-		go func() {
-			defer wg.Done()
-			sumShare(cols, origin, of, out, w, workers)
-		}()
-	}
-	wg.Wait()
+	parallel.Each(workers, workers, func(w int) { sumShare(cols, origin, of, out, w, workers) })
 }
 
 func sumShare(cols []Column, origin []doubledouble.Number, of []int32, out []*Moments, mine, shares int) {
