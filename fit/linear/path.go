@@ -14,35 +14,67 @@ import "gonum.org/v1/gonum/mat"
 // Cost O(p^3) once and O(p^2) a fit.
 func (h *HeldOut) PathSSE(sp *Spectrum, count int, weight func(i, k int) float64) []float64 {
 	r := sp.Rank
-	base := sp.ComponentSlopes(r)
-	ee := h.SSE(base)
+	al := h.alongOf(sp)
 	out := make([]float64, count)
-	if r == 0 {
-		for i := range out {
-			out[i] = ee
-		}
-		return out
-	}
-	ze := h.residualMoments(sp, base)
-	zz := h.turned(sp)
-	d, zzd := make([]float64, r), make([]float64, r)
+	d := make([]float64, r)
+	var moved []int
 	for i := range out {
+		moved = moved[:0]
 		for k := range d {
 			d[k] = (weight(i, k) - 1/sp.Sigma[k]) * sp.UZ[k]
-		}
-		sse := ee
-		for k := range d {
-			v := 0.0
-			row := zz[k*r : k*r+r]
-			for l, x := range d {
-				v += row[l] * x
+			if d[k] != 0 {
+				moved = append(moved, k)
 			}
-			zzd[k] = v
-			sse += d[k] * (v - 2*ze[k])
+		}
+		sse := al.ee
+		switch {
+		case len(moved) == 0:
+		case moved[len(moved)-1]-moved[0] == len(moved)-1: // unbroken: no look-ups
+			from := moved[0]
+			x := d[from : from+len(moved)]
+			for k, dk := range x {
+				v := 0.0
+				for l, z := range al.zz[(from+k)*r+from : (from+k)*r+from+k] {
+					v += z * x[l]
+				}
+				sse += dk * (2*v + al.zz[(from+k)*r+from+k]*dk - 2*al.ze[from+k])
+			}
+		default:
+			for _, k := range moved {
+				v := 0.0
+				for _, l := range moved {
+					v += al.zz[k*r+l] * d[l]
+				}
+				sse += d[k] * (v - 2*al.ze[k])
+			}
 		}
 		out[i] = max(0, sse)
 	}
 	return out
+}
+
+// along holds what PathSSE needs of held-out rows along the directions of one spectrum: e'e, Z'e and Z'Z.
+type along struct {
+	of     *Spectrum
+	ee     float64
+	ze, zz []float64
+}
+
+// alongOf forms it, or gives the one of the last call where the spectrum is the same.
+func (h *HeldOut) alongOf(sp *Spectrum) *along {
+	h.mu.Lock()
+	defer h.mu.Unlock()
+	if h.along != nil && h.along.of == sp {
+		return h.along
+	}
+	base := sp.ComponentSlopes(sp.Rank)
+	a := &along{of: sp, ee: h.SSE(base)}
+	if sp.Rank > 0 {
+		a.ze = h.residualMoments(sp, base)
+		a.zz = h.turned(sp)
+	}
+	h.along = a
+	return a
 }
 
 // residualMoments returns Z'e for the residuals of the slopes, Z the held-out rows along the directions.
@@ -53,13 +85,22 @@ func (h *HeldOut) residualMoments(sp *Spectrum, slopes []float64) []float64 {
 		if sp.scale[col] == 0 {
 			continue
 		}
-		v := h.r[col]
-		for j := range p {
-			if slopes[j] != 0 {
-				v = v.Sub(h.s[col*p+j].MulFloat(slopes[j]))
+		var x float64
+		if l := h.light; l != nil {
+			x = l.r[col]
+			for j, b := range slopes {
+				x -= l.s[col*p+j] * b
 			}
+		} else {
+			v := h.r[col]
+			for j := range p {
+				if slopes[j] != 0 {
+					v = v.Sub(h.s[col*p+j].MulFloat(slopes[j]))
+				}
+			}
+			x = v.Float()
 		}
-		x := v.Float() / sp.scale[col]
+		x /= sp.scale[col]
 		for k := range r {
 			out[k] += sp.V[i*r+k] * x
 		}
@@ -73,14 +114,19 @@ const thin = 1e-5
 // turned returns Z'Z along the directions, r x r.
 func (h *HeldOut) turned(sp *Spectrum) []float64 {
 	m, r := len(sp.Cols), sp.Rank
-	if least := sp.Sigma[r-1]; least*least < thin {
+	if least := sp.Sigma[r-1]; h.light == nil && least*least < thin {
 		return h.turnedExactly(sp)
 	}
 	s := mat.NewDense(m, m, nil)
+	to := s.RawMatrix().Data
 	for i, a := range sp.Cols {
 		for j, b := range sp.Cols {
 			if d := sp.scale[a] * sp.scale[b]; d > 0 {
-				s.Set(i, j, h.s[a*h.P+b].Float()/d)
+				if h.light != nil {
+					to[i*m+j] = h.light.s[a*h.P+b] / d
+				} else {
+					to[i*m+j] = h.s[a*h.P+b].Float() / d
+				}
 			}
 		}
 	}

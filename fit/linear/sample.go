@@ -36,6 +36,10 @@ type Sample struct {
 
 	once     sync.Once
 	spectrum *Spectrum
+
+	light                  *light // float64 moments instead of S, R and YY
+	solveOnce, inverseOnce sync.Once
+	solved                 *solved
 }
 
 // NewSample centres the moments m of the reduction red. Cost O(p^2).
@@ -90,11 +94,17 @@ func (s *Sample) SD(j int) float64 {
 	if !s.Constant {
 		d = float64(s.N)
 	}
+	if s.light != nil {
+		return math.Sqrt(s.light.s[j*s.P+j] / d)
+	}
 	return math.Sqrt(s.S[j*s.P+j].Float() / d)
 }
 
 // Scale returns the root of the diagonal of S, the length of each (centred) column.
 func (s *Sample) Scale() []number {
+	if s.light != nil {
+		return numbers(s.light.scale())
+	}
 	d := make([]number, s.P)
 	for j := range d {
 		d[j] = s.S[j*s.P+j].Sqrt()
@@ -105,6 +115,9 @@ func (s *Sample) Scale() []number {
 // Correlation returns the correlation of regressors i and j (of uncentred columns without constant), NaN for a
 // column without variation.
 func (s *Sample) Correlation(i, j int) float64 {
+	if l := s.light; l != nil {
+		return l.s[i*s.P+j] / math.Sqrt(l.s[i*s.P+i]*l.s[j*s.P+j])
+	}
 	d := s.S[i*s.P+i].Mul(s.S[j*s.P+j])
 	if d.Hi <= 0 {
 		return math.NaN()
@@ -136,6 +149,9 @@ func (s *Sample) ConstantFor(slopes []float64) float64 {
 // RSS returns the residual sum of squares of the slopes on these rows (with the constant of ConstantFor),
 // y'y - 2 b'X'y + b'X'X b, in double-double. Cost O(p^2).
 func (s *Sample) RSS(slopes []float64) float64 {
+	if s.light != nil {
+		return s.light.quadratic(slopes)
+	}
 	return math.Max(0, quadratic(s.P, s.S, s.R, s.YY, slopes).Float())
 }
 
@@ -163,6 +179,17 @@ func quadratic(p int, S, R []number, YY number, b []float64) number {
 // of a are taken as exact. Cost O(p^2 m).
 func (s *Sample) Transform(a []float64, m int) *Sample {
 	p := s.P
+	if s.light != nil {
+		out := &Sample{N: s.N, P: m, Constant: s.Constant, Mean: make([]number, m), MeanY: s.MeanY, light: s.transformLight(a, m)}
+		for l := range p {
+			for i := range m {
+				if w := a[l*m+i]; w != 0 {
+					out.Mean[i] = out.Mean[i].Add(s.Mean[l].MulFloat(w))
+				}
+			}
+		}
+		return out
+	}
 	out := &Sample{N: s.N, P: m, Constant: s.Constant, Mean: make([]number, m), MeanY: s.MeanY,
 		S: make([]number, m*m), R: make([]number, m), YY: s.YY}
 	sa := make([]number, p*m)
@@ -195,6 +222,13 @@ func (s *Sample) Transform(a []float64, m int) *Sample {
 // Keep returns the sample of the regressors in cols, in that order.
 func (s *Sample) Keep(cols []int) *Sample {
 	m := len(cols)
+	if s.light != nil {
+		out := &Sample{N: s.N, P: m, Constant: s.Constant, Mean: make([]number, m), MeanY: s.MeanY, light: s.light.keep(cols)}
+		for i, c := range cols {
+			out.Mean[i] = s.Mean[c]
+		}
+		return out
+	}
 	out := &Sample{N: s.N, P: m, Constant: s.Constant, Mean: make([]number, m), MeanY: s.MeanY,
 		S: make([]number, m*m), R: make([]number, m), YY: s.YY}
 	for i, c := range cols {
@@ -208,11 +242,15 @@ func (s *Sample) Keep(cols []int) *Sample {
 
 // HeldOut holds the moments of rows that a fit has not seen, about the means of its training rows.
 type HeldOut struct {
-	N  int
-	P  int
-	s  []number
-	r  []number
-	yy number
+	N     int
+	P     int
+	s     []number
+	r     []number
+	yy    number
+	light *light // instead of s, r and yy
+
+	mu    sync.Mutex
+	along *along
 }
 
 // NewHeldOut takes the moments m of held-out rows to the centre of the training sample. Cost O(p^2).
@@ -247,11 +285,19 @@ func NewHeldOut(red *reduction.Reduction, m *reduction.Moments, training *Sample
 
 // SSE returns the sum of squared prediction errors of the slopes (with the training constant). Cost O(p^2).
 func (h *HeldOut) SSE(slopes []float64) float64 {
+	if h.light != nil {
+		return h.light.quadratic(slopes)
+	}
 	return math.Max(0, quadratic(h.P, h.s, h.r, h.yy, slopes).Float())
 }
 
 // SST returns the squared deviations of the held-out values from the training mean (from zero without constant).
-func (h *HeldOut) SST() float64 { return h.yy.Float() }
+func (h *HeldOut) SST() float64 {
+	if h.light != nil {
+		return h.light.yy
+	}
+	return h.yy.Float()
+}
 
 // NewRawSample returns the uncentred sample of [1 x]: p+1 columns about zero, the constant's first. In a model without
 // constant it is the p columns alone. It serves condition indexes with the constant; it has no dependent variable.

@@ -152,6 +152,9 @@ type Fit struct {
 // Cost O(p^3) in double-double.
 func (s *Sample) LeastSquares(withInverse bool) *Fit {
 	p := s.P
+	if s.light != nil {
+		return s.leastSquaresLight(withInverse)
+	}
 	a, scale := s.scaled()
 	f := factorise(p, a, nil)
 	if f.rank < p || f.smallest < 1e-22 {
@@ -282,6 +285,7 @@ type Spectrum struct {
 	spare []int
 	f     *factor
 	z     []number
+	swept []sweep // of a light sample, instead of f and z
 	scale []float64
 }
 
@@ -297,6 +301,9 @@ func (s *Sample) Spectrum(spare []int) *Spectrum {
 
 func (s *Sample) decompose(spare []int) *Spectrum {
 	p := s.P
+	if s.light != nil {
+		return s.decomposeLight(spare)
+	}
 	a, scale := s.scaled()
 	sp := &Spectrum{p: p, spare: spare, scale: make([]float64, p)}
 	isSpare := make([]bool, p)
@@ -408,6 +415,9 @@ func (sp *Spectrum) Unidentified() []bool {
 // slopes takes weights on the directions to slopes in the user's units, the spared regressors fitted freely.
 func (sp *Spectrum) slopes(weight func(k int) float64) []float64 {
 	m, r := len(sp.Cols), sp.Rank
+	if sp.f == nil {
+		return sp.slopesLight(weight)
+	}
 	std := make([]number, sp.p)
 	for i, col := range sp.Cols {
 		v := 0.0
@@ -471,6 +481,9 @@ func (sp *Spectrum) RidgeDegrees(penalty float64) float64 {
 
 // Spared returns the number of spared regressors that are fitted.
 func (sp *Spectrum) Spared() int {
+	if sp.f == nil {
+		return len(sp.swept)
+	}
 	held := 0
 	for _, c := range sp.f.pivots {
 		for _, j := range sp.spare {
@@ -535,6 +548,9 @@ func (sp *Spectrum) mapWith(weight func(k int) float64) []float64 {
 // rounding. A column without variation, or an exact dependency at penalty 0, gives NaN in every entry.
 func (s *Sample) PenalizedInverse(penalty float64, spare []int) []float64 {
 	p := s.P
+	if s.light != nil {
+		s = s.heavy()
+	}
 	a, scale := s.scaled()
 	isSpare := make([]bool, p)
 	for _, j := range spare {
@@ -560,6 +576,9 @@ func (s *Sample) PenalizedInverse(penalty float64, spare []int) []float64 {
 // equal variance. Cost O(p^3).
 func (s *Sample) sandwich(m []float64) []number {
 	p := s.P
+	if s.light != nil {
+		s = s.heavy()
+	}
 	ms := make([]number, p*p)
 	for i := range p {
 		for k := range p {
