@@ -76,16 +76,15 @@ type Fold struct {
 }
 
 func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) error {
-	sample := c.Problem.Sample
-	final := remedy.Training{Sample: sample, Final: true}
+	final := remedy.Training{Sample: c.Problem.Sample, Final: true}
+	rows := c.foldedRows(red)
 	for r := range red.Parts {
-		for _, part := range red.Parts[r] {
-			train := linear.NewSample(red, red.Total.Minus(part))
-			final.Inner = append(final.Inner, remedy.Split{Train: train, Held: linear.NewHeldOut(red, part, train)})
+		for f := range red.Parts[r] {
+			final.Inner = append(final.Inner, rows.split(r, f))
 		}
 	}
 	c.Alternatives = make([]*Alternative, len(choices))
-	folds, err := c.outOfSample(ctx, red, choices, opt)
+	folds, err := c.outOfSample(ctx, rows, choices, opt)
 	if err != nil {
 		return err
 	}
@@ -112,11 +111,11 @@ func each(ctx context.Context, n, workers int, f func(i int)) error {
 
 // outOfSample learns every variant on the training rows of every fold and predicts the held-out ones. The inner folds of an outer
 // fold are the remaining outer folds: training rows = all minus that fold minus the inner one. Result: [variant][split].
-func (c *Comparison) outOfSample(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) ([][]Fold, error) {
+func (c *Comparison) outOfSample(ctx context.Context, rows *foldedRows, choices []choice, opt Options) ([][]Fold, error) {
 	type place struct{ repeat, fold int }
 	var places []place
-	for r := range red.Parts {
-		for f := range red.Parts[r] {
+	for r := range rows.red.Parts {
+		for f := range rows.red.Parts[r] {
 			places = append(places, place{r, f})
 		}
 	}
@@ -128,7 +127,7 @@ func (c *Comparison) outOfSample(ctx context.Context, red *reduction.Reduction, 
 	done := 0
 	err := each(ctx, len(places), opt.Workers, func(k int) {
 		p := places[k]
-		t, held := training(red, p.repeat, p.fold)
+		t, held := rows.training(p.repeat, p.fold)
 		for i, ch := range choices {
 			fit := ch.variant.Learn(t)
 			f := Fold{Repeat: p.repeat, Fold: p.fold, Rows: held.N, sse: held.SSE(fit.Slopes), sst: held.SST(), Chosen: math.NaN(), train: t.Sample.N}
@@ -146,21 +145,6 @@ func (c *Comparison) outOfSample(ctx context.Context, red *reduction.Reduction, 
 		}
 	})
 	return out, err
-}
-
-// training forms the training rows of one outer fold with their inner splits, and the held-out rows.
-func training(red *reduction.Reduction, repeat, fold int) (remedy.Training, *linear.HeldOut) {
-	part := red.Parts[repeat]
-	moments := red.Total.Minus(part[fold])
-	t := remedy.Training{Sample: linear.NewSample(red, moments)}
-	for g := range part {
-		if g == fold {
-			continue
-		}
-		train := linear.NewSample(red, moments.Minus(part[g]))
-		t.Inner = append(t.Inner, remedy.Split{Train: train, Held: linear.NewHeldOut(red, part[g], train)})
-	}
-	return t, linear.NewHeldOut(red, part[fold], t.Sample)
 }
 
 // summarize pools the folds of one alternative and compares them with those of as-is.

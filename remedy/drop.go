@@ -97,10 +97,24 @@ func (p *Problem) dropVariant(key, name string, removes []int) Variant {
 		}
 	}
 	basis := selection(len(p.Names), keep)
+	status := make([]Status, len(p.Names))
+	for j := range status {
+		status[j] = Estimated
+		if gone[j] {
+			status[j] = Zero
+		}
+	}
 	return Variant{
 		Key: key, Label: "Drop " + name, Removes: removes, OwnVariance: true,
-		Summary:  "Least squares without " + join(p.names(removes)) + ".",
-		Learn:    func(t Training) *Fitted { return fitBasis(t, basis, len(keep), Estimated) },
+		Summary: "Least squares without " + join(p.names(removes)) + ".",
+		Learn: func(t Training) *Fitted {
+			if !t.Final {
+				if b, ok := t.Sample.Without(removes); ok {
+					return &Fitted{Slopes: b, Columns: len(keep), Status: status}
+				}
+			}
+			return fitBasis(t, basis, len(keep), Estimated)
+		},
 		Describe: func(f *Final) Description { return describeDrop(f, removes, keep) },
 	}
 }

@@ -23,16 +23,16 @@ type light struct {
 // lightTolerance is the eigenvalue of the correlation matrix, relative to the largest, below which a light sample counts as exactly dependent.
 const lightTolerance = 1e-11
 
-// EnoughForLight reports whether samples drawn from the rows of s may be light: the smallest eigenvalue of its correlation matrix is above 1e-6 of
-// the largest and the fit is not so close that its residuals would drown in rounding (1 - R2 above 1e-7). Then light held-out errors keep about
-// nine digits.
-func EnoughForLight(s *Sample) bool {
+// EnoughForLight reports whether samples drawn from the rows of s may be light: the smallest eigenvalue of its correlation matrix is above ratio
+// times the largest, and the fit is not so close that its residuals would drown in rounding (1 - R2 above 1e-7). Light estimates then keep about
+// 15 + log10(ratio) digits.
+func EnoughForLight(s *Sample, ratio float64) bool {
 	sp := s.Spectrum(nil)
 	if sp.Rank < s.P || s.P == 0 {
 		return false
 	}
-	ratio := sp.Sigma[sp.Rank-1] / sp.Sigma[0]
-	return ratio*ratio > 1e-6 && s.LeastSquares(false).RSS > 1e-7*s.YY.Float()
+	v := sp.Sigma[sp.Rank-1] / sp.Sigma[0]
+	return v*v > ratio && s.LeastSquares(false).RSS > 1e-7*s.YY.Float()
 }
 
 // NewLightSample makes a sample of the sums of one weighting of the units, as reduction.Units.Sum gives them for one fold, or several added up.

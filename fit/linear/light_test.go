@@ -192,7 +192,7 @@ func TestLightLongley(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if !EnoughForLight(NewSample(red, red.Total)) {
+	if !EnoughForLight(NewSample(red, red.Total), 1e-6) {
 		t.Fatal("Longley's regressors are not that close to dependent")
 	}
 	u := reduction.GroupUnits(red, []*reduction.Moments{red.Total}, []int32{0}, 1)
@@ -211,14 +211,14 @@ func TestLightGate(t *testing.T) {
 		v := float64(i)
 		x[0].Hi[i], x[1].Hi[i], y.Hi[i] = v, v+1e-3*math.Sin(v), math.Cos(v)
 	}
-	if EnoughForLight(sampleOf(t, x, y, true)) {
+	if EnoughForLight(sampleOf(t, x, y, true), 1e-6) {
 		t.Error("eigenvalues a billion apart passed")
 	}
 	exact := reduction.Column{Hi: make([]float64, n)}
 	for i := range n {
 		exact.Hi[i] = 3 * x[0].Hi[i]
 	}
-	if EnoughForLight(sampleOf(t, x[:1], exact, true)) {
+	if EnoughForLight(sampleOf(t, x[:1], exact, true), 1e-6) {
 		t.Error("a fit without residuals passed")
 	}
 }
