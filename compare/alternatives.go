@@ -30,6 +30,8 @@ type Alternative struct {
 	RSS          float64
 	R2           float64
 	Out          OutOfSample
+	// TuningResampled is nil where nothing is tuned, the user fixed the value, or nothing was resampled.
+	TuningResampled *TuningResampled
 
 	value []float64 // (constant, slopes)
 	diff  []float64 // covariance of (value - as-is) over sigma^2, q x q
@@ -52,6 +54,9 @@ type Coefficient struct {
 	MSE       float64 // variance + max(0, bias^2 - variance of the bias estimate), with the as-is residual variance
 	Posterior float64
 	Meaning   string
+	Resampled *Resampled // nil where nothing was resampled
+
+	weights []float64 // on (constant, slopes)
 }
 
 // OutOfSample is the error on held-out rows, everything learned inside the training rows.
@@ -96,7 +101,7 @@ func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choic
 	for i, a := range c.Alternatives {
 		a.Out = summarize(folds[i], folds[0])
 	}
-	return nil
+	return c.resample(ctx, red, choices, opt)
 }
 
 // each runs f for 0..n-1 on so many workers; what has not begun once ctx is done is left.
@@ -359,7 +364,7 @@ func combined(status []remedy.Status, weights []float64) remedy.Status {
 // coefficient states the combination w of (constant, slopes).
 func (c *Comparison) coefficient(a *Alternative, name string, w []float64, st remedy.Status) Coefficient {
 	nan := math.NaN()
-	out := Coefficient{Name: name, SE: nan, T: nan, P: nan, Low: nan, High: nan, Status: st, Bias: nan, MSE: nan, Posterior: nan}
+	out := Coefficient{Name: name, SE: nan, T: nan, P: nan, Low: nan, High: nan, Status: st, Bias: nan, MSE: nan, Posterior: nan, weights: w}
 	out.Estimate = dot(w, a.value)
 	if st == remedy.NotIdentified {
 		out.Estimate = nan

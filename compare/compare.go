@@ -23,7 +23,7 @@ import (
 // Options bound a run without changing its result.
 type Options struct {
 	Workers int // 0: one a core
-	// Progress hears how far a stage ("rows read", "splits learned") has come; total is 0 where it is not known. It is called from one goroutine at
+	// Progress hears how far a stage ("rows read", "splits learned", "resamples learned") has come; total is 0 where it is not known. It is called from one goroutine at
 	// a time and may be nil.
 	Progress func(stage string, done, total int)
 }
@@ -47,6 +47,7 @@ type Comparison struct {
 	DF            float64
 	Ledger        []LedgerEntry
 	Alternatives  []*Alternative
+	Resampling    Resampling
 	NotApplicable []NotApplicable
 	Notes         []design.Note
 }
@@ -67,7 +68,7 @@ func Check(ctx context.Context, t *dataset.Table, study *Study, opt Options) (*C
 
 // Run diagnoses and fits every alternative. The result does not depend on Options.
 //
-// Cost: one pass over the rows (one a repeat up to folds.Exact rows), then per split and variant O(p^3).
+// Cost: one pass over the rows (one a repeat up to folds.Exact rows), then per split, resample and variant O(p^3).
 func Run(ctx context.Context, t *dataset.Table, study *Study, opt Options) (*Comparison, error) {
 	c, red, err := prepare(ctx, t, study, opt, true)
 	if err != nil {

@@ -42,6 +42,7 @@ type Study struct {
 	NoConstant     bool
 	Folds          FoldSpec
 	Seed           int64
+	Resamples      int // 0: none
 	Cutoffs        collinear.Cutoffs
 	ShowSmallCells bool
 	Invented       bool // a built-in study

@@ -69,6 +69,7 @@ func draft(path string, t *dataset.Table) string {
 # rows: year >= 1990             # the sample, if not all rows
 # constant: true
 # folds: {kind: random, count: 10, repeats: 5}
+# resamples: 999                 # 0: none
 # seed: 20260101
 `)
 	return b.String()

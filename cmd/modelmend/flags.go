@@ -20,7 +20,7 @@ type studyFlags struct {
 	sets, skip, cutoffs            []string
 	constant, showSmall            bool
 	seed                           int64
-	workers                        int
+	workers, resamples             int
 }
 
 func (f *studyFlags) register(cmd *cobra.Command) {
@@ -36,7 +36,8 @@ func (f *studyFlags) register(cmd *cobra.Command) {
 	fl.StringSliceVar(&f.skip, "skip", nil, "remedies to leave out")
 	fl.BoolVar(&f.constant, "constant", true, "the model has a constant")
 	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, or column:NAME")
-	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds")
+	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds and resamples")
+	fl.IntVar(&f.resamples, "resamples", compare.DefaultResamples, "times the whole procedure is repeated on resampled rows (0: not at all)")
 	fl.StringArrayVar(&f.cutoffs, "cutoff", nil, "a reference mark, such as vif=5, condition_index=30, variance_share=0.5")
 	fl.BoolVar(&f.showSmall, "show-small-cells", false, "show what rests on fewer than ten rows: names of category levels, errors of held-out parts")
 	fl.IntVar(&f.workers, "workers", 0, "cores to use (0: all); the output does not depend on it")
@@ -108,6 +109,12 @@ func (f *studyFlags) apply(cmd *cobra.Command, s *compare.Study) error {
 	}
 	if given("seed") {
 		s.Seed = f.seed
+	}
+	if given("resamples") {
+		if err := checkResamples(float64(f.resamples)); err != "" {
+			return wrongUse("--resamples: %s", err)
+		}
+		s.Resamples = f.resamples
 	}
 	if given("show-small-cells") {
 		s.ShowSmallCells = f.showSmall

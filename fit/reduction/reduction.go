@@ -165,15 +165,16 @@ func (m *Moments) settle() {
 	}
 }
 
+// combine returns a plus sign times b; sign is a whole number.
 func combine(a, b *Moments, sign float64) *Moments {
 	out := NewMoments(a.Q)
 	out.N = a.N + int(sign)*b.N
 	for i := range a.sumHi {
-		v := doubledouble.Number{Hi: a.sumHi[i], Lo: a.sumLo[i]}.Add(doubledouble.Number{Hi: sign * b.sumHi[i], Lo: sign * b.sumLo[i]})
+		v := doubledouble.Number{Hi: a.sumHi[i], Lo: a.sumLo[i]}.Add(doubledouble.Number{Hi: b.sumHi[i], Lo: b.sumLo[i]}.MulFloat(sign))
 		out.sumHi[i], out.sumLo[i] = v.Hi, v.Lo
 	}
 	for i := range a.crossHi {
-		v := doubledouble.Number{Hi: a.crossHi[i], Lo: a.crossLo[i]}.Add(doubledouble.Number{Hi: sign * b.crossHi[i], Lo: sign * b.crossLo[i]})
+		v := doubledouble.Number{Hi: a.crossHi[i], Lo: a.crossLo[i]}.Add(doubledouble.Number{Hi: b.crossHi[i], Lo: b.crossLo[i]}.MulFloat(sign))
 		out.crossHi[i], out.crossLo[i] = v.Hi, v.Lo
 	}
 	return out
@@ -192,6 +193,8 @@ type Reduction struct {
 	Origin   []doubledouble.Number
 	Total    *Moments
 	Parts    [][]*Moments // [repeat][fold]
+	// Groups are the cells of the split where cells hold several rows each, else nil.
+	Groups []*Moments
 }
 
 // Split says how rows fall into folds: row i is in Cell[i], and that cell in Fold[repeat][cell], one of Counts[repeat] folds. The zero value
@@ -231,6 +234,7 @@ func Reduce(x []Column, y Column, constant bool, split Split, workers int) (*Red
 		return red, nil
 	case 2*split.Cells <= n:
 		cells := sums(cols, red.Origin, split.Cell, split.Cells, workers)
+		red.Groups = cells
 		for r, fold := range split.Fold {
 			red.Parts = append(red.Parts, gather(cells, fold, split.Counts[r]))
 		}
@@ -373,6 +377,7 @@ func (a *Accumulator) Finish(fold [][]int32, counts []int) *Reduction {
 		a.red.Total = gather(a.cells, make([]int32, len(a.cells)), 1)[0]
 		return a.red
 	}
+	a.red.Groups = a.cells
 	for r, f := range fold {
 		a.red.Parts = append(a.red.Parts, gather(a.cells, f, counts[r]))
 	}
@@ -382,12 +387,24 @@ func (a *Accumulator) Finish(fold [][]int32, counts []int) *Reduction {
 
 // Keep returns the reduction of the regressors in cols alone.
 func (r *Reduction) Keep(cols []int) *Reduction {
+	if len(cols) == r.P {
+		same := true
+		for k, c := range cols {
+			same = same && k == c
+		}
+		if same {
+			return r
+		}
+	}
 	out := &Reduction{P: len(cols), Constant: r.Constant}
 	all := append(append([]int{}, cols...), r.P)
 	for _, c := range all {
 		out.Origin = append(out.Origin, r.Origin[c])
 	}
 	out.Total = r.Total.keep(all)
+	for _, m := range r.Groups {
+		out.Groups = append(out.Groups, m.keep(all))
+	}
 	for _, parts := range r.Parts {
 		var kept []*Moments
 		for _, m := range parts {
@@ -408,5 +425,44 @@ func (m *Moments) keep(cols []int) *Moments {
 			out.crossHi[to], out.crossLo[to] = m.crossHi[from], m.crossLo[from]
 		}
 	}
+	return out
+}
+
+// Weighted forms the parts of one repeat and their total again, row i counted weight[unit[i]] times (a whole number) in fold[i]. It keeps the
+// origin, and all digits. Cost O(n q^2).
+func (r *Reduction) Weighted(cols []Column, unit, fold []int32, folds int, weight []float64) *Reduction {
+	var row []int
+	var of []int32
+	for i, u := range unit {
+		for range int(weight[u]) {
+			row = append(row, i)
+			of = append(of, fold[i])
+		}
+	}
+	again := make([]Column, len(cols))
+	for j, c := range cols {
+		again[j].Hi = make([]float64, len(row))
+		for k, i := range row {
+			again[j].Set(k, c.At(i))
+		}
+	}
+	out := &Reduction{P: r.P, Constant: r.Constant, Origin: r.Origin}
+	out.Parts = [][]*Moments{sums(again, r.Origin, of, folds, 1)}
+	out.addUp()
+	return out
+}
+
+// WeightedGroups is Weighted for whole groups of rows; group g lies in fold[g]. Cost O(groups q^2).
+func (r *Reduction) WeightedGroups(fold []int32, folds int, weight []float64) *Reduction {
+	out := &Reduction{P: r.P, Constant: r.Constant, Origin: r.Origin, Parts: [][]*Moments{make([]*Moments, folds)}}
+	for f := range folds {
+		out.Parts[0][f] = NewMoments(r.P + 1)
+	}
+	for g, m := range r.Groups {
+		if weight[g] != 0 {
+			out.Parts[0][fold[g]] = combine(out.Parts[0][fold[g]], m, weight[g])
+		}
+	}
+	out.addUp()
 	return out
 }

@@ -1,0 +1,443 @@
+package compare
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"slices"
+	"sync"
+
+	"modelmend/fit/folds"
+	"modelmend/fit/linear"
+	"modelmend/fit/reduction"
+	"modelmend/remedy"
+)
+
+// DefaultResamples is the number of resamples of a study that names none.
+const DefaultResamples = 999
+
+// Resampling says how the whole procedure was repeated on resampled rows.
+type Resampling struct {
+	Count int // resamples; 0: none
+	Kind  string
+	Units int // what is drawn: rows or groups of rows
+	Folds int // inner folds in which tuning is re-chosen
+	// Deletions is the number of delete-a-group fits behind the acceleration.
+	Deletions int
+}
+
+// The kinds of resampling.
+const (
+	DrawRows   = "rows"
+	DrawGroups = "groups of rows"
+)
+
+// Resampled is the spread of one coefficient when the whole procedure, tuning and selection included, is repeated on resampled rows.
+type Resampled struct {
+	SE           float64 // standard deviation over the resamples
+	Low, High    float64 // percentile interval, 95 %
+	AccLow       float64 // bias-corrected and accelerated interval, NaN where it cannot be formed
+	AccHigh      float64
+	Positive     float64 // share of resamples with this sign
+	Negative     float64
+	Used         int // resamples in which the coefficient had a value
+	Acceleration float64
+	BiasOffset   float64 // z0: the normal quantile of the share of resamples below the estimate
+}
+
+// TuningResampled is how often each value of a tuning was chosen.
+type TuningResampled struct {
+	Shares            []float64 // by place in Tuning.Values; the rest up to 1 lies beyond them
+	Low, Median, High float64   // 2.5, 50 and 97.5 % of the chosen values
+}
+
+// mostTuningFolds bounds the folds of one resample: leaving one out of many rows would learn every tuning as many times.
+const mostTuningFolds = 60
+
+// mostDeletions bounds the fits behind the acceleration; more units are deleted in groups.
+const mostDeletions = 200
+
+// batch is how many resamples are summed together.
+const batch = 8
+
+// rowSource sums drawn units again into training rows with their inner splits.
+type rowSource struct {
+	units int
+	folds int
+	light *reduction.Units                            // nil: double-double
+	heavy func(weight []float64) *reduction.Reduction // nil: light
+	kind  string
+}
+
+// trainings forms the rows of several weightings of the units.
+func (s *rowSource) trainings(weights [][]float64) []remedy.Training {
+	out := make([]remedy.Training, len(weights))
+	if s.light == nil {
+		for b, w := range weights {
+			red := s.heavy(w)
+			out[b].Sample = linear.NewSample(red, red.Total)
+			for _, part := range red.Parts[0] {
+				if part.N > 0 && part.N < red.Total.N {
+					train := linear.NewSample(red, red.Total.Minus(part))
+					out[b].Inner = append(out[b].Inner, remedy.Split{Train: train, Held: linear.NewHeldOut(red, part, train)})
+				}
+			}
+		}
+		return out
+	}
+	for b, sums := range s.light.Sum(weights) {
+		total := added(sums)
+		out[b].Sample = linear.NewLightSample(s.light, total)
+		for _, part := range sums {
+			if part[0] > 0 && part[0] < total[0] {
+				out[b].Inner = append(out[b].Inner, lightSplit(s.light, total, part))
+			}
+		}
+	}
+	return out
+}
+
+// rowSource decides what is drawn: rows up to folds.Exact of them (or where groups would not fit into memory), beyond that groups of rows dealt at
+// random. A unit keeps its fold of the first repeat in every resample, so that copies of a row never lie on both sides of a split.
+func (c *Comparison) rowSource(red *reduction.Reduction) *rowSource {
+	light := linear.EnoughForLight(c.Problem.Sample, resamplesLight)
+	fold, count := c.Plan.Fold[0], c.Plan.Counts[0]
+	if c.Plan.Kind == folds.Random && red.Groups != nil {
+		s := &rowSource{units: len(red.Groups), folds: count, kind: DrawGroups}
+		if light {
+			s.light = reduction.GroupUnits(red, red.Groups, fold, count)
+		} else {
+			s.heavy = func(w []float64) *reduction.Reduction { return red.WeightedGroups(fold, count, w) }
+		}
+		return s
+	}
+	n := c.Design.Rows
+	of := make([]int32, n)
+	for i := range of {
+		of[i] = fold[c.Plan.Cell[i]]
+	}
+	if count > mostTuningFolds {
+		if p, err := folds.NewRandom(n, 10, 1, c.Study.Seed, false); err == nil {
+			count = 10
+			for i := range of {
+				of[i] = int32(p.Of(0, i))
+			}
+		}
+	}
+	s := &rowSource{units: n, folds: count, kind: DrawRows}
+	unit := make([]int32, n)
+	for i := range unit {
+		unit[i] = int32(i)
+	}
+	if groups := min(folds.Groups, (1<<27)/(8*reduction.Width(red.P+1))); n > folds.Exact && groups >= 200 {
+		s.units, s.kind = groups, DrawGroups
+		rng := rand.New(rand.NewPCG(uint64(c.Study.Seed), 0x9a0b5))
+		at := make([]int, count)
+		for _, k := range rng.Perm(n) {
+			f := int(of[k])
+			// The groups of fold f are f, f+count, f+2 count, ...
+			unit[k] = int32(f + count*(at[f]%((groups-f+count-1)/count)))
+			at[f]++
+		}
+	}
+	cols := append(append([]reduction.Column{}, c.Design.Columns()...), c.Design.Y)
+	if light {
+		s.light = reduction.NewUnits(red, cols, unit, s.units, of, count)
+	} else {
+		s.heavy = func(w []float64) *reduction.Reduction { return red.Weighted(cols, unit, of, count, w) }
+	}
+	return s
+}
+
+// draw gives the number of times that each unit is drawn in resample b: as many draws as units, with replacement, from a random stream of its own.
+func draw(seed int64, b, units int) []float64 {
+	w := make([]float64, units)
+	rng := rand.New(rand.NewPCG(uint64(seed), 0xb0075<<32|uint64(b)))
+	for range units {
+		w[rng.IntN(units)]++
+	}
+	return w
+}
+
+// deletions leaves out one group of units after the other: the fits behind the acceleration.
+func deletions(seed int64, units int) [][]float64 {
+	groups := min(units, mostDeletions)
+	out := make([][]float64, groups)
+	for g := range out {
+		out[g] = make([]float64, units)
+		for i := range out[g] {
+			out[g][i] = 1
+		}
+	}
+	perm := rand.New(rand.NewPCG(uint64(seed), 0xde1e7e)).Perm(units)
+	for i, k := range perm {
+		out[i%groups][k] = 0
+	}
+	return out
+}
+
+// replicates holds what every alternative gave in every resample.
+type replicates struct {
+	q      int
+	values [][]float64 // [alternative][resample*q + coefficient]: (constant, slopes); NaN where not identified
+	chosen [][]float64 // [alternative][resample]: the value of the tuning, NaN without
+}
+
+func newReplicates(alternatives, count, q int) *replicates {
+	r := &replicates{q: q, values: make([][]float64, alternatives), chosen: make([][]float64, alternatives)}
+	for i := range r.values {
+		r.values[i] = make([]float64, count*q)
+		r.chosen[i] = make([]float64, count)
+	}
+	return r
+}
+
+// learn puts every choice, learned on t, at place b.
+func (r *replicates) learn(choices []choice, t remedy.Training, b int) {
+	for i, ch := range choices {
+		fit := ch.variant.Learn(t)
+		to := r.values[i][b*r.q : (b+1)*r.q]
+		k := r.q - len(fit.Slopes)
+		if k == 1 {
+			to[0] = t.Sample.ConstantFor(fit.Slopes)
+		}
+		copy(to[k:], fit.Slopes)
+		for j, st := range fit.Status {
+			if st == remedy.NotIdentified {
+				to[k+j] = math.NaN()
+			}
+		}
+		r.chosen[i][b] = math.NaN()
+		if fit.Tuning != nil {
+			r.chosen[i][b] = fit.Tuning.Values[fit.Tuning.Chosen]
+		}
+	}
+}
+
+// resample repeats the whole procedure and fills in the spread of every coefficient.
+func (c *Comparison) resample(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) error {
+	count := c.Study.Resamples
+	if count <= 0 {
+		return nil
+	}
+	source := c.rowSource(red)
+	c.Resampling = Resampling{Count: count, Kind: source.kind, Units: source.units, Folds: source.folds}
+	if source.units < 2 {
+		return nil
+	}
+	deleted := deletions(c.Study.Seed, source.units)
+	c.Resampling.Deletions = len(deleted)
+	q := red.P
+	if red.Constant {
+		q++
+	}
+	drawn := newReplicates(len(choices), count, q)
+	jack := newReplicates(len(choices), len(deleted), q)
+	total := count + len(deleted)
+	var mu sync.Mutex
+	done := 0
+	err := each(ctx, (total+batch-1)/batch, opt.Workers, func(k int) {
+		var weights [][]float64
+		for b := k * batch; b < min(total, (k+1)*batch); b++ {
+			if b < count {
+				weights = append(weights, draw(c.Study.Seed, b, source.units))
+			} else {
+				weights = append(weights, deleted[b-count])
+			}
+		}
+		for i, t := range source.trainings(weights) {
+			if ctx.Err() != nil {
+				return
+			}
+			if b := k*batch + i; b < count {
+				drawn.learn(choices, t, b)
+			} else {
+				jack.learn(choices, t, b-count)
+			}
+		}
+		if opt.Progress != nil {
+			mu.Lock()
+			done += len(weights)
+			opt.Progress("resamples learned", done, total)
+			mu.Unlock()
+		}
+	})
+	if err != nil {
+		return err
+	}
+	return each(ctx, len(c.Alternatives), opt.Workers, func(i int) {
+		a := c.Alternatives[i]
+		for _, list := range [][]Coefficient{a.Coefficients, a.Derived} {
+			for j := range list {
+				list[j].Resampled = spread(&list[j], drawn.combine(i, list[j].weights), jack.combine(i, list[j].weights))
+			}
+		}
+		if t := a.Fitted.Tuning; t != nil && !t.Fixed {
+			a.TuningResampled = tuned(t.Values, drawn.chosen[i])
+		}
+	})
+}
+
+// combine gives the combination w of (constant, slopes) in every resample of alternative i.
+func (r *replicates) combine(i int, w []float64) []float64 {
+	n := len(r.chosen[i])
+	out := make([]float64, n)
+	for j, x := range w {
+		if x == 0 {
+			continue
+		}
+		for b := range out {
+			out[b] += x * r.values[i][b*r.q+j]
+		}
+	}
+	return out
+}
+
+// spread sums up the resampled values of a coefficient; nil where it has no value of its own.
+func spread(c *Coefficient, values, deleted []float64) *Resampled {
+	if c.Status == remedy.NotIdentified {
+		return nil
+	}
+	v := make([]float64, 0, len(values))
+	for _, x := range values {
+		if !math.IsNaN(x) {
+			v = append(v, x)
+		}
+	}
+	nan := math.NaN()
+	r := &Resampled{SE: nan, Low: nan, High: nan, AccLow: nan, AccHigh: nan, Used: len(v), Acceleration: nan, BiasOffset: nan}
+	if len(v) < 2 {
+		return r
+	}
+	slices.Sort(v)
+	n := float64(len(v))
+	mean, below := 0.0, 0.0
+	for _, x := range v {
+		mean += x / n
+		switch {
+		case x < 0:
+			r.Negative += 1 / n
+		case x > 0:
+			r.Positive += 1 / n
+		}
+		switch {
+		case x < c.Estimate:
+			below++
+		case x == c.Estimate:
+			below += 0.5
+		}
+	}
+	ss := 0.0
+	for _, x := range v {
+		ss += (x - mean) * (x - mean)
+	}
+	r.SE = math.Sqrt(ss / (n - 1))
+	if len(v) < 39 { // no 2.5 % point lies inside
+		return r
+	}
+	r.Low, r.High = quantile(v, 0.025), quantile(v, 0.975)
+	r.BiasOffset = normalQuantile(below / n)
+	r.Acceleration = acceleration(deleted)
+	r.AccLow, r.AccHigh = accelerated(v, r.BiasOffset, r.Acceleration)
+	return r
+}
+
+// quantile returns the p-th quantile of sorted values: order statistic (n+1)p, between neighbours in proportion.
+func quantile(sorted []float64, p float64) float64 {
+	n := len(sorted)
+	h := p*float64(n+1) - 1
+	if h <= 0 {
+		return sorted[0]
+	}
+	if h >= float64(n-1) {
+		return sorted[n-1]
+	}
+	i := int(h)
+	f := h - float64(i)
+	if f == 0 {
+		return sorted[i]
+	}
+	return sorted[i] + f*(sorted[i+1]-sorted[i])
+}
+
+// acceleration is sum d^3 / (6 (sum d^2)^1.5) with d the mean of the delete-a-group values less each of them.
+//
+// Source: Efron (1987), Journal of the American Statistical Association 82(397), 171-185, with the jackknife for the influence of each unit.
+func acceleration(deleted []float64) float64 {
+	mean, n := 0.0, 0.0
+	for _, v := range deleted {
+		if !math.IsNaN(v) {
+			mean += v
+			n++
+		}
+	}
+	if n < 2 {
+		return math.NaN()
+	}
+	mean /= n
+	var two, three float64
+	for _, v := range deleted {
+		if d := mean - v; !math.IsNaN(d) {
+			two += d * d
+			three += d * d * d
+		}
+	}
+	if two == 0 {
+		return 0
+	}
+	return three / (6 * math.Pow(two, 1.5))
+}
+
+// accelerated returns the 95 % interval with bias correction z0 and acceleration a: the quantiles of the sorted values at
+// Phi(z0 + (z0+z)/(1 - a (z0+z))), z the normal 2.5 and 97.5 % points; NaN where z0 is infinite, or a is so large that the formula turns over.
+//
+// Source: Efron (1987), Journal of the American Statistical Association 82(397), 171-185.
+func accelerated(sorted []float64, z0, a float64) (low, high float64) {
+	if math.IsInf(z0, 0) || math.IsNaN(z0+a) {
+		return math.NaN(), math.NaN()
+	}
+	at := func(p float64) float64 {
+		z := z0 + normalQuantile(p)
+		d := 1 - a*z
+		if d <= 0 {
+			return math.NaN()
+		}
+		return quantile(sorted, normal(z0+z/d))
+	}
+	low, high = at(0.025), at(0.975)
+	if math.IsNaN(low + high) {
+		return math.NaN(), math.NaN()
+	}
+	return low, high
+}
+
+// tuned counts the chosen values.
+func tuned(values, chosen []float64) *TuningResampled {
+	t := &TuningResampled{Shares: make([]float64, len(values))}
+	sorted := slices.Clone(chosen)
+	slices.Sort(sorted)
+	for _, v := range sorted {
+		if i := slices.Index(values, v); i >= 0 {
+			t.Shares[i] += 1 / float64(len(sorted))
+		}
+	}
+	t.Low, t.Median, t.High = quantile(sorted, 0.025), quantile(sorted, 0.5), quantile(sorted, 0.975)
+	return t
+}
+
+// Sentence says how the resamples were drawn.
+func (r Resampling) Sentence() string {
+	if r.Count == 0 {
+		return "The procedure was not resampled."
+	}
+	what := fmt.Sprintf("%d rows drawn with replacement", r.Units)
+	if r.Kind == DrawGroups {
+		what = fmt.Sprintf("%d groups of rows, dealt at random, drawn with replacement", r.Units)
+	}
+	return fmt.Sprintf("%d resamples, each of %s; a row keeps its fold, and tuning is chosen again in each by %d-fold cross-validation.", r.Count, what, r.Folds)
+}
+
+func normal(z float64) float64 { return 0.5 * math.Erfc(-z/math.Sqrt2) }
+
+func normalQuantile(p float64) float64 { return -math.Sqrt2 * math.Erfcinv(2*p) }
