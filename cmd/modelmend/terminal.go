@@ -118,7 +118,14 @@ func ladderLines(r *view.Results) []string {
 	for _, a := range r.Alternatives {
 		labelWidth = max(labelWidth, min(34, utf8.RuneCountInString(a.Label)))
 	}
-	out := []string{fmt.Sprintf("%s %12s %16s %20s", pad(name, labelWidth), "coefficient", "standard error", "out-of-sample error")}
+	resampled := r.Run.Resampling.Count > 0
+	spread := func(text string) string { // one more column
+		if !resampled {
+			return ""
+		}
+		return fmt.Sprintf("%12s", text)
+	}
+	out := []string{fmt.Sprintf("%s %12s %16s%s %20s", pad(name, labelWidth), "coefficient", "standard error", spread("resampled"), "out-of-sample error")}
 	base, _ := find(r.Alternatives[0], name)
 	alike := 0
 	for i, a := range r.Alternatives {
@@ -134,7 +141,11 @@ func ladderLines(r *view.Results) []string {
 		if status == "estimated" {
 			status = ""
 		}
-		out = append(out, strings.TrimRight(fmt.Sprintf("%s %12s %16s %20s  %s", pad(a.Label, labelWidth), cell(k.Estimate), cell(k.StandardError), view.Four(a.OutOfSample.RMSE), status), " "))
+		again := "-"
+		if k.Resampled != nil {
+			again = cell(k.Resampled.StandardError)
+		}
+		out = append(out, strings.TrimRight(fmt.Sprintf("%s %12s %16s%s %20s  %s", pad(a.Label, labelWidth), cell(k.Estimate), cell(k.StandardError), spread(again), view.Four(a.OutOfSample.RMSE), status), " "))
 	}
 	if alike > 0 {
 		out = append(out, fmt.Sprintf("(%d more leave it within 5 %% of what it is when left alone)", alike))

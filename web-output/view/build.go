@@ -69,6 +69,8 @@ func buildRun(c *compare.Comparison, study, toolVersion string) Run {
 	for _, s := range c.Design.SetAside {
 		run.Rows.SetAside = append(run.Rows.SetAside, SetAside{s.Reason, s.Column, s.Count})
 	}
+	rs := c.Resampling
+	run.Resampling = Resampling{rs.Count, rs.Kind, rs.Units, rs.Folds, rs.Sentence()}
 	if c.Plan == nil {
 		run.Folds.AssignmentReason = "nothing was predicted: diagnosis only"
 		return run
@@ -195,8 +197,13 @@ func correlations(c *compare.Comparison) Correlations {
 }
 
 func buildCoefficient(c compare.Coefficient) Coefficient {
-	return Coefficient{Name: c.Name, Estimate: Num(c.Estimate), StandardError: Num(c.SE), StandardErrorReason: c.SEReason, TRatio: Num(c.T), PValue: Num(c.P),
+	out := Coefficient{Name: c.Name, Estimate: Num(c.Estimate), StandardError: Num(c.SE), StandardErrorReason: c.SEReason, TRatio: Num(c.T), PValue: Num(c.P),
 		Low: Num(c.Low), High: Num(c.High), Status: string(c.Status), EstimatedBias: Num(c.Bias), EstimatedMSE: Num(c.MSE), PosteriorSD: Num(c.Posterior)}
+	if r := c.Resampled; r != nil && c.Status != remedy.Zero {
+		out.Resampled = &Resampled{StandardError: Num(r.SE), Low: Num(r.Low), High: Num(r.High), BiasCorrected: Limits{Num(r.AccLow), Num(r.AccHigh)},
+			SharePositive: Num(r.Positive), ShareNegative: Num(r.Negative), Used: r.Used}
+	}
+	return out
 }
 
 func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative {
@@ -280,6 +287,9 @@ func buildTuning(c *compare.Comparison, a *compare.Alternative) *Tuning {
 		out.Path = append(out.Path, point)
 	}
 	out.AsGoodAs = asGoodAs(t)
+	if r := a.TuningResampled; r != nil {
+		out.Resampled = &TuningResampled{Num(r.Low), Num(r.Median), Num(r.High), nums(r.Shares)}
+	}
 	for k, comp := range t.Components {
 		out.Spectrum = append(out.Spectrum, ComponentInfo{k + 1, Num(comp.Variance), Num(comp.Share), Num(comp.T), nums(comp.Loadings), comp.Kept})
 	}

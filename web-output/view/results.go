@@ -51,15 +51,16 @@ type Note struct {
 
 // Run records what was read and how it was treated.
 type Run struct {
-	Tool        string `json:"tool"` // "modelmend"
-	ToolVersion string `json:"toolVersion"`
-	Seed        int64  `json:"seed"`
-	Folds       Folds  `json:"folds"`
-	Data        string `json:"data"`     // as the user wrote it
-	DataHash    string `json:"dataHash"` // "sha256:" and the hex digest of the bytes read
-	Rows        Rows   `json:"rows"`
-	Study       string `json:"study"` // the effective study as YAML; running it again gives the same bytes
-	LookedAt    int    `json:"lookedAt"`
+	Tool        string     `json:"tool"` // "modelmend"
+	ToolVersion string     `json:"toolVersion"`
+	Seed        int64      `json:"seed"`
+	Folds       Folds      `json:"folds"`
+	Resampling  Resampling `json:"resampling"`
+	Data        string     `json:"data"`     // as the user wrote it
+	DataHash    string     `json:"dataHash"` // "sha256:" and the hex digest of the bytes read
+	Rows        Rows       `json:"rows"`
+	Study       string     `json:"study"` // the effective study as YAML; running it again gives the same bytes
+	LookedAt    int        `json:"lookedAt"`
 }
 
 // Folds says how rows were split. Assignment[repeat][row] is the 0-based fold of each used row in file order; it is
@@ -249,12 +250,38 @@ type Coefficient struct {
 	Resampled           *Resampled `json:"resampled"` // null when the procedure was not resampled
 }
 
-// Resampled holds the spread of the whole procedure, tuning included.
+// Resampled holds the spread of one coefficient when the whole procedure, tuning and selection included, is repeated on resampled rows.
 type Resampled struct {
-	StandardError Num `json:"standardError"`
-	Low           Num `json:"low"`
-	High          Num `json:"high"`
-	ShareNegative Num `json:"shareNegative"`
+	StandardError Num    `json:"standardError"` // standard deviation over the resamples
+	Low           Num    `json:"low"`           // 2.5 % point
+	High          Num    `json:"high"`          // 97.5 % point
+	BiasCorrected Limits `json:"biasCorrected"` // and accelerated; null where it cannot be formed
+	SharePositive Num    `json:"sharePositive"`
+	ShareNegative Num    `json:"shareNegative"`
+	Used          int    `json:"used"` // resamples in which the coefficient had a value
+}
+
+// Limits are the ends of an interval.
+type Limits struct {
+	Low  Num `json:"low"`
+	High Num `json:"high"`
+}
+
+// Resampling says how the procedure was repeated.
+type Resampling struct {
+	Count int    `json:"count"` // 0: not resampled
+	Drawn string `json:"drawn"` // what is drawn with replacement
+	Units int    `json:"units"` // how many of them there are
+	Folds int    `json:"folds"` // inner folds in which tuning is chosen again
+	Text  string `json:"text"`
+}
+
+// TuningResampled is how often each value of the path was chosen in the resamples.
+type TuningResampled struct {
+	Low    Num   `json:"low"` // 2.5, 50 and 97.5 % points of the chosen values
+	Median Num   `json:"median"`
+	High   Num   `json:"high"`
+	Shares []Num `json:"shares"` // in the order of Path
 }
 
 // OutOfSample is the cross-validated error, everything learned inside the training rows.
@@ -286,17 +313,18 @@ type FoldError struct {
 
 // Tuning says how the penalty or the number of components was chosen, and what every other choice gives.
 type Tuning struct {
-	Parameter        string          `json:"parameter"` // penalty | components
-	Rule             string          `json:"rule"`      // cross-validation | fixed by the user
-	Penalty          Num             `json:"penalty"`
-	PenaltyTimes     Num             `json:"penaltyTimes"` // penalty * (n-1): the multiplier of each regressor's variance in the sum of squares
-	Components       Num             `json:"components"`
-	EffectiveDegrees Num             `json:"effectiveDegrees"`
-	Chosen           int             `json:"chosen"` // index into Path
-	Candidates       []RuleValue     `json:"candidates"`
-	Path             []PathPoint     `json:"path"`
-	AsGoodAs         AsGoodAs        `json:"asGoodAs"`
-	Spectrum         []ComponentInfo `json:"spectrum"` // components only
+	Parameter        string           `json:"parameter"` // penalty | components
+	Rule             string           `json:"rule"`      // cross-validation | fixed by the user
+	Penalty          Num              `json:"penalty"`
+	PenaltyTimes     Num              `json:"penaltyTimes"` // penalty * (n-1): the multiplier of each regressor's variance in the sum of squares
+	Components       Num              `json:"components"`
+	EffectiveDegrees Num              `json:"effectiveDegrees"`
+	Chosen           int              `json:"chosen"` // index into Path
+	Candidates       []RuleValue      `json:"candidates"`
+	Path             []PathPoint      `json:"path"`
+	AsGoodAs         AsGoodAs         `json:"asGoodAs"`
+	Resampled        *TuningResampled `json:"resampled"` // null where the value is fixed or nothing was resampled
+	Spectrum         []ComponentInfo  `json:"spectrum"`  // components only
 }
 
 // RuleValue is the value which another published rule would choose.
