@@ -1,6 +1,9 @@
 package linear
 
-import "gonum.org/v1/gonum/mat"
+import (
+	"gonum.org/v1/gonum/blas/blas64"
+	"gonum.org/v1/gonum/mat"
+)
 
 // PathSSE returns the sums of squared prediction errors on the held-out rows of count fits that differ only in how they weigh the directions of
 // the spectrum: fit i has the coefficient weight(i, k) * UZ[k] on direction k (1/Sigma[k] is least squares). sp must be the spectrum, without
@@ -16,41 +19,43 @@ func (h *HeldOut) PathSSE(sp *Spectrum, count int, weight func(i, k int) float64
 	r := sp.Rank
 	al := h.alongOf(sp)
 	out := make([]float64, count)
-	d := make([]float64, r)
-	var moved []int
 	for i := range out {
-		moved = moved[:0]
-		for k := range d {
-			d[k] = (weight(i, k) - 1/sp.Sigma[k]) * sp.UZ[k]
-			if d[k] != 0 {
-				moved = append(moved, k)
-			}
+		out[i] = al.ee
+	}
+	// Direction by direction, all fits at once; d holds the distances of the directions so far.
+	d := make([]float64, r*count)
+	sum := make([]float64, count)
+	for k := range r {
+		row := d[k*count : (k+1)*count]
+		least := 1 / sp.Sigma[k]
+		moved := false
+		for i := range row {
+			row[i] = (weight(i, k) - least) * sp.UZ[k]
+			moved = moved || row[i] != 0
 		}
-		sse := al.ee
-		switch {
-		case len(moved) == 0:
-		case moved[len(moved)-1]-moved[0] == len(moved)-1: // unbroken: no look-ups
-			from := moved[0]
-			x := d[from : from+len(moved)]
-			for k, dk := range x {
-				v := 0.0
-				for l, z := range al.zz[(from+k)*r+from : (from+k)*r+from+k] {
-					v += z * x[l]
-				}
-				sse += dk * (2*v + al.zz[(from+k)*r+from+k]*dk - 2*al.ze[from+k])
-			}
-		default:
-			for _, k := range moved {
-				v := 0.0
-				for _, l := range moved {
-					v += al.zz[k*r+l] * d[l]
-				}
-				sse += d[k] * (v - 2*al.ze[k])
-			}
+		if !moved {
+			continue
 		}
-		out[i] = max(0, sse)
+		zz := al.zz[k*r : k*r+r]
+		for i, x := range row {
+			sum[i] = zz[k]*x - 2*al.ze[k]
+		}
+		for l, z := range zz[:k] {
+			axpy(2*z, d[l*count:(l+1)*count], sum)
+		}
+		for i, x := range row {
+			out[i] += x * sum[i]
+		}
+	}
+	for i := range out {
+		out[i] = max(0, out[i])
 	}
 	return out
+}
+
+// axpy adds a*x to y.
+func axpy(a float64, x, y []float64) {
+	blas64.Axpy(a, blas64.Vector{N: len(x), Data: x, Inc: 1}, blas64.Vector{N: len(y), Data: y, Inc: 1})
 }
 
 // along holds what PathSSE needs of held-out rows along the directions of one spectrum: e'e, Z'e and Z'Z.
