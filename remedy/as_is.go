@@ -28,7 +28,7 @@ var _ = register(Remedy{
 })
 
 func learnAsIs(t Training) *Fitted {
-	fit := t.Sample.LeastSquares(t.Final)
+	fit := t.Sample.LeastSquares(t.covariance())
 	f := &Fitted{Slopes: fit.Slopes, Columns: fit.Rank, Status: make([]Status, len(fit.Slopes))}
 	for j := range f.Status {
 		f.Status[j] = Estimated
@@ -36,7 +36,7 @@ func learnAsIs(t Training) *Fitted {
 			f.Status[j] = NotIdentified
 		}
 	}
-	if t.Final {
+	if t.covariance() {
 		f.Factor = fit.Factor(t.Sample)
 	}
 	return f

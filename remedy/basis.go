@@ -16,7 +16,7 @@ import (
 func fitBasis(t Training, a []float64, m int, held Status) *Fitted {
 	p := t.Sample.P
 	sub := t.Sample.Transform(a, m)
-	fit := sub.LeastSquares(t.Final)
+	fit := sub.LeastSquares(t.covariance())
 	f := &Fitted{Slopes: make([]float64, p), Status: make([]Status, p), Columns: fit.Rank}
 	for i := range p {
 		f.Status[i] = Zero
@@ -37,7 +37,7 @@ func fitBasis(t Training, a []float64, m int, held Status) *Fitted {
 			}
 		}
 	}
-	if t.Final {
+	if t.covariance() {
 		f.Factor = embed(fit.Factor(sub), a, p, m, t.Sample.Constant)
 	}
 	return f

@@ -130,10 +130,26 @@ func (c componentFit) learn(t Training) *Fitted {
 	}
 	path := c.path(t.Sample)
 	f := &Fitted{Slopes: path(tuning.Chosen), Tuning: tuning, Columns: len(c.spare) + tuning.Chosen}
-	if t.Final {
+	switch {
+	case t.Final:
 		c.finish(t.Sample, f, path)
+	case t.Covariance:
+		f.Factor = c.factor(t.Sample, tuning.Chosen)
 	}
 	return f
+}
+
+// factor is the covariance over sigma^2 of the fit on so many components.
+func (c componentFit) factor(s *linear.Sample, count int) []float64 {
+	if len(c.spare) > 0 {
+		a, m := c.basis(s, s.Keep(c.rotated).Spectrum(nil), count)
+		return fitBasis(Training{Sample: s, Covariance: true}, a, m, Implied).Factor
+	}
+	sp := s.Spectrum(nil)
+	if count >= sp.Rank {
+		return s.LeastSquares(true).Factor(s)
+	}
+	return s.WithConstant(sp.ComponentMap(count)) // M S M' = M for a projection
 }
 
 func (c componentFit) finish(s *linear.Sample, f *Fitted, path func(int) []float64) {
@@ -148,16 +164,7 @@ func (c componentFit) finish(s *linear.Sample, f *Fitted, path func(int) []float
 		t.Slopes = append(t.Slopes, path(k))
 		t.Degrees = append(t.Degrees, float64(len(c.spare)+k))
 	}
-	t.Factor = func(k int) []float64 {
-		if k == sp.Rank && len(c.spare) == 0 {
-			return s.LeastSquares(true).Factor(s)
-		}
-		if len(c.spare) == 0 {
-			return s.WithConstant(s.Spectrum(nil).ComponentMap(k)) // M S M' = M for a projection
-		}
-		a, m := c.basis(s, sp, k)
-		return fitBasis(Training{Sample: s, Final: true}, a, m, Implied).Factor
-	}
+	t.Factor = func(k int) []float64 { return c.factor(s, k) }
 	f.Factor = t.Factor(t.Chosen)
 	f.Status = make([]Status, s.P)
 	for j := range f.Status {

@@ -109,8 +109,12 @@ func (p *Problem) dropVariant(key, name string, removes []int) Variant {
 		Summary: "Least squares without " + join(p.names(removes)) + ".",
 		Learn: func(t Training) *Fitted {
 			if !t.Final {
-				if b, ok := t.Sample.Without(removes); ok {
-					return &Fitted{Slopes: b, Columns: len(keep), Status: status}
+				if b, inverse, ok := t.Sample.Without(removes, t.Covariance); ok {
+					f := &Fitted{Slopes: b, Columns: len(keep), Status: status}
+					if t.Covariance {
+						f.Factor = t.Sample.WithConstant(inverse)
+					}
+					return f
 				}
 			}
 			return fitBasis(t, basis, len(keep), Estimated)

@@ -111,8 +111,13 @@ type NotApplicable struct {
 type Training struct {
 	Sample *linear.Sample
 	Inner  []Split // how the training rows are split for tuning
-	Final  bool    // all rows: the covariance is wanted as well
+	// Covariance asks for Fitted.Factor; Final, for everything that is told of the fit to all rows, the covariance included.
+	Covariance bool
+	Final      bool
 }
+
+// covariance reports whether Fitted.Factor is wanted.
+func (t Training) covariance() bool { return t.Covariance || t.Final }
 
 // Split is one inner split: rows to learn on, rows to predict.
 type Split struct {
@@ -139,8 +144,9 @@ type Fitted struct {
 	Columns int      // slopes that were free to move
 	Tuning  *Tuning  // nil where nothing is tuned
 	Weights []float64
+	// For Training.Covariance or Final:
+	Factor []float64 // covariance over sigma^2 of (constant, slopes), q x q row-major
 	// Only for Training.Final:
-	Factor    []float64 // covariance over sigma^2 of (constant, slopes), q x q row-major
 	Posterior []float64 // posterior variance over sigma^2 of the slopes, where a prior is implied
 	// Cross is the covariance over sigma^2 with the model left alone, q x q; nil: it equals Factor, as for every
 	// least-squares fit under linear restrictions.

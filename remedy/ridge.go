@@ -102,10 +102,24 @@ func (r ridgeFit) learn(t Training) *Fitted {
 	sp := t.Sample.Spectrum(r.spare)
 	penalty := values[tuning.Chosen]
 	f := &Fitted{Slopes: r.slopes(t.Sample, sp, penalty), Tuning: tuning, Columns: t.Sample.P}
-	if t.Final {
+	switch {
+	case t.Final:
 		r.finish(t.Sample, sp, f)
+	case t.Covariance:
+		f.Factor = r.factor(t.Sample, sp, penalty)
 	}
 	return f
+}
+
+// factor is the sampling covariance over sigma^2 given the penalty, W S W in the slopes.
+func (r ridgeFit) factor(s *linear.Sample, sp *linear.Spectrum, penalty float64) []float64 {
+	switch {
+	case penalty == 0:
+		return s.LeastSquares(true).Factor(s)
+	case len(r.spare) == 0:
+		return s.WithConstant(sp.RidgeSampling(penalty))
+	}
+	return s.Factor(s.PenalizedInverse(penalty, r.spare))
 }
 
 // slopes at penalty 0 are least squares, solved in double-double rather than through the spectrum.
@@ -122,29 +136,20 @@ func (r ridgeFit) finish(s *linear.Sample, sp *linear.Spectrum, f *Fitted) {
 		t.Slopes = append(t.Slopes, r.slopes(s, sp, v))
 		t.Degrees = append(t.Degrees, sp.RidgeDegrees(v))
 	}
-	factor := func(penalty float64) []float64 {
-		switch {
-		case penalty == 0:
-			return s.LeastSquares(true).Factor(s)
-		case len(r.spare) == 0:
-			return s.WithConstant(sp.RidgeSampling(penalty))
-		}
-		return s.Factor(s.PenalizedInverse(penalty, r.spare))
-	}
 	// The ridge slopes are W X'y, so their covariance with the least-squares slopes is sigma^2 W.
 	cross := func(penalty float64) []float64 {
 		switch {
 		case penalty == 0:
-			return factor(0)
+			return r.factor(s, sp, 0)
 		case len(r.spare) == 0:
 			return s.WithConstant(sp.RidgeMap(penalty))
 		}
 		return s.WithConstant(s.PenalizedInverse(penalty, r.spare))
 	}
-	t.Factor = func(i int) []float64 { return factor(t.Values[i]) }
+	t.Factor = func(i int) []float64 { return r.factor(s, sp, t.Values[i]) }
 	t.Cross = func(i int) []float64 { return cross(t.Values[i]) }
 	penalty := t.Values[t.Chosen]
-	f.Factor = factor(penalty)
+	f.Factor = r.factor(s, sp, penalty)
 	f.Cross = cross(penalty)
 	if penalty > 0 {
 		m := s.PenalizedInverse(penalty, r.spare)

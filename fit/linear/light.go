@@ -285,43 +285,67 @@ func (s *Sample) leastSquaresLight(withInverse bool) *Fit {
 	return fit
 }
 
-// Without returns the least-squares slopes with the columns in gone left out (zero there), from the inverse of the full fit,
+// Without returns the least-squares slopes with the columns in gone left out (zero there) and, where asked for, the inverse of the moments of the
+// others (p x p, zeros at what is gone), from the inverse C of the full fit:
 //
-//	b - C_g (C_gg)^-1 b_g,
+//	b - C_g (C_gg)^-1 b_g,  C - C_g (C_gg)^-1 C_g'.
 //
-// and false where the sample is not light or the full fit is exactly dependent. Cost O(p) for one column once the inverse is known.
-func (s *Sample) Without(gone []int) ([]float64, bool) {
+// ok is false where the sample is not light or the full fit is exactly dependent. Cost O(p) for one column, O(p^2) with the inverse, once C is known.
+func (s *Sample) Without(gone []int, withInverse bool) (slopes, inverse []float64, ok bool) {
 	if s.light == nil || s.solve() == nil {
-		return nil, false
+		return nil, nil, false
 	}
 	p, m := s.P, len(gone)
 	c := s.lightInverse()
-	b := append([]float64{}, s.solved.b...)
+	// U = L^-1 D^-1 C_g' with C_gg = D L L' D, so that C_g (C_gg)^-1 x_g = U' (L^-1 D^-1 x_g).
 	a := make([]float64, m*m)
 	w := make([]float64, m)
-	scale := make([]float64, m)
+	u := make([]float64, m*p)
 	for i, g := range gone {
-		scale[i] = math.Sqrt(c[g*p+g])
-		w[i] = b[g] / scale[i]
+		scale := math.Sqrt(c[g*p+g])
+		w[i] = s.solved.b[g] / scale
 		for j, h := range gone[:i+1] {
-			a[i*m+j] = c[g*p+h] / scale[i] / scale[j]
+			a[i*m+j] = c[g*p+h] / scale / math.Sqrt(c[h*p+h])
+		}
+		for j := range p {
+			u[i*p+j] = c[g*p+j] / scale
 		}
 	}
 	if !cholesky(a, m) {
-		return nil, false
+		return nil, nil, false
 	}
 	solveLower(a, m, w)
-	solveUpper(a, m, w)
-	for i, g := range gone {
-		f := w[i] / scale[i]
-		for j := range b {
-			b[j] -= c[g*p+j] * f
+	for i := range m {
+		for k := range i {
+			axpy(-a[i*m+k], u[k*p:k*p+p], u[i*p:i*p+p])
+		}
+		for j := range p {
+			u[i*p+j] /= a[i*m+i]
+		}
+	}
+	slopes = append([]float64{}, s.solved.b...)
+	for i := range m {
+		axpy(-w[i], u[i*p:i*p+p], slopes)
+	}
+	for _, g := range gone {
+		slopes[g] = 0
+	}
+	if !withInverse {
+		return slopes, nil, true
+	}
+	inverse = append([]float64{}, c...)
+	for i := range m {
+		row := u[i*p : i*p+p]
+		for j, v := range row {
+			axpy(-v, row, inverse[j*p:j*p+p])
 		}
 	}
 	for _, g := range gone {
-		b[g] = 0
+		for j := range p {
+			inverse[g*p+j], inverse[j*p+g] = 0, 0
+		}
 	}
-	return b, true
+	return slopes, inverse, true
 }
 
 // transformLight is Transform; a has few entries that are not zero.

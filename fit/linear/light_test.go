@@ -131,13 +131,28 @@ func TestLightAgrees(t *testing.T) {
 		ssp, lssp := train.Spectrum(spare), lt.Spectrum(spare)
 		same("ridge with a spared slope", lssp.RidgeSlopes(0.2), ssp.RidgeSlopes(0.2))
 		near(t, name+" spared degrees", lssp.RidgeDegrees(0.2), ssp.RidgeDegrees(0.2), 1e-10)
-		without, ok := lt.Without([]int{0})
+		without, inverse, ok := lt.Without([]int{0}, true)
 		if !ok {
 			t.Fatal("Without refused a full-rank sample")
 		}
 		var keep []int
 		for j := 1; j < p; j++ {
 			keep = append(keep, j)
+		}
+		kept := train.Keep(keep).LeastSquares(true)
+		for i := range keep {
+			for j := range keep {
+				near(t, name+" inverse without the first", inverse[keep[i]*p+keep[j]], kept.Inverse[i*len(keep)+j], 1e-8)
+			}
+		}
+		if p > 3 {
+			two, inv, ok := lt.Without([]int{2, 0}, true)
+			rest := train.Keep(append([]int{1}, keep[2:]...)).LeastSquares(true)
+			if !ok || two[0] != 0 || two[2] != 0 {
+				t.Errorf("%s: without two: %v", name, two)
+			}
+			near(t, name+" without two", two[1], rest.Slopes[0], 1e-8)
+			near(t, name+" inverse without two", inv[p+1], rest.Inverse[0], 1e-9)
 		}
 		same("without the first", without, append([]float64{0}, train.Keep(keep).LeastSquares(false).Slopes...))
 		same("kept", append([]float64{0}, lt.Keep(keep).LeastSquares(false).Slopes...), without)
@@ -179,7 +194,7 @@ func TestLightDependent(t *testing.T) {
 	sx, sy := subset(x, y, func(i int) bool { return i >= 8 })
 	want := sampleOf(t, sx[:2], sy, true).LeastSquares(false).Slopes
 	near(t, "slope", fit.Slopes[0], want[0], 1e-10)
-	if _, ok := s.Without([]int{0}); ok {
+	if _, _, ok := s.Without([]int{0}, false); ok {
 		t.Error("Without accepted a dependent sample")
 	}
 }
