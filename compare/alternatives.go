@@ -32,6 +32,7 @@ type Alternative struct {
 	Out          OutOfSample
 	// TuningResampled is nil where nothing is tuned, the user fixed the value, or nothing was resampled.
 	TuningResampled *TuningResampled
+	Simulated       []Simulated // by coefficient and truth
 
 	value []float64 // (constant, slopes)
 	diff  []float64 // covariance of (value - as-is) over sigma^2, q x q
@@ -101,7 +102,10 @@ func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choic
 	for i, a := range c.Alternatives {
 		a.Out = summarize(folds[i], folds[0])
 	}
-	return c.resample(ctx, red, choices, opt)
+	if err := c.resample(ctx, red, choices, opt); err != nil {
+		return err
+	}
+	return c.simulate(ctx, red, choices, opt)
 }
 
 // each runs f for 0..n-1 on so many workers; what has not begun once ctx is done is left.

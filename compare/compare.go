@@ -23,7 +23,7 @@ import (
 // Options bound a run without changing its result.
 type Options struct {
 	Workers int // 0: one a core
-	// Progress hears how far a stage ("rows read", "splits learned", "resamples learned") has come; total is 0 where it is not known. It is called from one goroutine at
+	// Progress hears how far a stage ("rows read", "splits learned", "resamples learned", "samples simulated") has come; total is 0 where it is not known. It is called from one goroutine at
 	// a time and may be nil.
 	Progress func(stage string, done, total int)
 }
@@ -48,6 +48,7 @@ type Comparison struct {
 	Ledger        []LedgerEntry
 	Alternatives  []*Alternative
 	Resampling    Resampling
+	Simulation    Simulation
 	NotApplicable []NotApplicable
 	Notes         []design.Note
 }

@@ -43,6 +43,7 @@ type Study struct {
 	Folds          FoldSpec
 	Seed           int64
 	Resamples      int // 0: none
+	Simulations    int // samples for each truth; 0: none; SimulationsBySize
 	Cutoffs        collinear.Cutoffs
 	ShowSmallCells bool
 	Invented       bool // a built-in study

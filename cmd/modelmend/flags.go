@@ -20,7 +20,7 @@ type studyFlags struct {
 	sets, skip, cutoffs            []string
 	constant, showSmall            bool
 	seed                           int64
-	workers, resamples             int
+	workers, resamples, simulate   int
 }
 
 func (f *studyFlags) register(cmd *cobra.Command) {
@@ -38,6 +38,7 @@ func (f *studyFlags) register(cmd *cobra.Command) {
 	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, or column:NAME")
 	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds and resamples")
 	fl.IntVar(&f.resamples, "resamples", compare.DefaultResamples, "times the whole procedure is repeated on resampled rows (0: not at all)")
+	fl.IntVar(&f.simulate, "simulations", compare.SimulationsBySize, "samples simulated for each truth (0: none; not given: by size, at most 2000)")
 	fl.StringArrayVar(&f.cutoffs, "cutoff", nil, "a reference mark, such as vif=5, condition_index=30, variance_share=0.5")
 	fl.BoolVar(&f.showSmall, "show-small-cells", false, "show what rests on fewer than ten rows: names of category levels, errors of held-out parts")
 	fl.IntVar(&f.workers, "workers", 0, "cores to use (0: all); the output does not depend on it")
@@ -110,11 +111,17 @@ func (f *studyFlags) apply(cmd *cobra.Command, s *compare.Study) error {
 	if given("seed") {
 		s.Seed = f.seed
 	}
-	if given("resamples") {
-		if err := checkResamples(float64(f.resamples)); err != "" {
-			return wrongUse("--resamples: %s", err)
+	for _, count := range []struct {
+		name  string
+		given int
+		set   *int
+	}{{"resamples", f.resamples, &s.Resamples}, {"simulations", f.simulate, &s.Simulations}} {
+		if given(count.name) {
+			if bad := checkResamples(float64(count.given)); bad != "" {
+				return wrongUse("--%s: %s", count.name, bad)
+			}
+			*count.set = count.given
 		}
-		s.Resamples = f.resamples
 	}
 	if given("show-small-cells") {
 		s.ShowSmallCells = f.showSmall

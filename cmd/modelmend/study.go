@@ -17,7 +17,7 @@ import (
 )
 
 // studyKeys are the keys of a study file in this version, in the order in which they are written.
-var studyKeys = []string{"data", "equation", "focal", "purpose", "smallest_effect", "keep", "groups", "rows", "remedies", "constant", "folds", "seed", "resamples", "cutoffs", "show_small_cells"}
+var studyKeys = []string{"data", "equation", "focal", "purpose", "smallest_effect", "keep", "groups", "rows", "remedies", "constant", "folds", "seed", "resamples", "simulations", "cutoffs", "show_small_cells"}
 
 // laterKeys are planned and refused by name, so that nobody thinks they were heeded.
 var laterKeys = []string{"restrictions", "prior", "weights", "clusters", "unit", "time", "within", "standard_errors", "resamples", "simulations", "declared"}
@@ -39,7 +39,7 @@ func (e *studyError) Error() string {
 }
 
 func newStudy() *compare.Study {
-	return &compare.Study{Purpose: compare.Explain, Seed: compare.DefaultSeed, Resamples: compare.DefaultResamples, Cutoffs: collinear.DefaultCutoffs()}
+	return &compare.Study{Purpose: compare.Explain, Seed: compare.DefaultSeed, Resamples: compare.DefaultResamples, Simulations: compare.SimulationsBySize, Cutoffs: collinear.DefaultCutoffs()}
 }
 
 // readStudy reads a study file; the data path in it is taken relative to the study's folder by the caller.
@@ -160,6 +160,14 @@ func (p *studyParser) key(key, value *yaml.Node) error {
 				return p.fail(value, "resamples: %s", bad)
 			}
 			s.Resamples = int(v)
+		}
+	case "simulations":
+		var v float64
+		if v, err = p.number(value, "simulations"); err == nil {
+			if bad := checkResamples(v); bad != "" {
+				return p.fail(value, "simulations: %s", bad)
+			}
+			s.Simulations = int(v)
 		}
 	case "cutoffs":
 		err = p.mapping(value, "cutoffs", func(k, v *yaml.Node) error {
@@ -408,6 +416,9 @@ func writeStudy(s *compare.Study) string {
 	if s.Resamples != compare.DefaultResamples {
 		add("resamples", &yaml.Node{Kind: yaml.ScalarNode, Value: strconv.Itoa(s.Resamples)})
 	}
+	if s.Simulations != compare.SimulationsBySize {
+		add("simulations", &yaml.Node{Kind: yaml.ScalarNode, Value: strconv.Itoa(s.Simulations)})
+	}
 	if s.Cutoffs != collinear.DefaultCutoffs() {
 		m := &yaml.Node{Kind: yaml.MappingNode, Style: yaml.FlowStyle}
 		m.Content = append(m.Content, text("vif"), number(s.Cutoffs.VIF), text("condition_index"), number(s.Cutoffs.ConditionIndex), text("variance_share"), number(s.Cutoffs.VarianceShare))
@@ -455,10 +466,11 @@ func isStudy(path string) bool {
 	return false
 }
 
-// checkResamples says what is wrong with a number of resamples, or nothing. Fewer than 99 leave nothing beyond a 2.5 % point worth the name.
+// checkResamples says what is wrong with a number of resamples or simulated samples, or nothing. Fewer than 99 leave nothing beyond a 2.5 % point
+// worth the name.
 func checkResamples(v float64) string {
 	if v != 0 && (v != math.Trunc(v) || v < 99 || v > 100000) {
-		return fmt.Sprintf("%g is not a number of resamples; write 0 for none, or a whole number from 99 to 100000", v)
+		return fmt.Sprintf("%g is not allowed; write 0 for none, or a whole number from 99 to 100000", v)
 	}
 	return ""
 }

@@ -555,3 +555,19 @@ func eigen(a []float64, m int) []float64 {
 	}
 	return w
 }
+
+// Root returns a root of the symmetric, positive semidefinite m x m matrix a, which it overwrites: R (m x rank, row-major) with R R' = a, columns
+// below lightTolerance of the largest eigenvalue left out. Cost O(m^3).
+func Root(a []float64, m int) (root []float64, rank int) {
+	lambda := eigen(a, m)
+	for rank < m && lambda[m-1-rank] > lightTolerance*lambda[m-1] {
+		rank++
+	}
+	root = make([]float64, m*rank)
+	for i := range m {
+		for k := range rank {
+			root[i*rank+k] = a[i*m+m-1-k] * math.Sqrt(lambda[m-1-k])
+		}
+	}
+	return root, rank
+}

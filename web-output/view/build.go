@@ -32,6 +32,10 @@ func Build(c *compare.Comparison, study, toolVersion string) *Results {
 	for _, a := range c.Alternatives {
 		r.Alternatives = append(r.Alternatives, buildAlternative(c, a))
 	}
+	r.Simulations = Simulations{Count: c.Simulation.Count, Truths: []Truth{}, Reason: c.Simulation.Reason, Text: c.Simulation.Sentence()}
+	for _, t := range c.Simulation.Truths {
+		r.Simulations.Truths = append(r.Simulations.Truths, Truth{t.Name, t.Text})
+	}
 	for _, n := range c.NotApplicable {
 		r.NotApplicable = append(r.NotApplicable, NotApplicable{n.Key, n.Remedy, n.Reason})
 	}
@@ -239,6 +243,11 @@ func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative
 	}
 	for _, w := range a.Description.Weights {
 		out.Weights = append(out.Weights, NamedValue{w.Name, Num(w.Value)})
+	}
+	for _, s := range a.Simulated {
+		out.Simulation = append(out.Simulation, Simulation{Truth: s.Truth, Coefficient: s.Coefficient, True: Num(s.True), Bias: Num(s.Bias), BiasError: Num(s.BiasError),
+			SD: Num(s.SD), SDError: Num(s.SDError), RMSE: Num(s.RMSE), RMSEError: Num(s.RMSEError), Coverage: Num(s.Coverage), CoverageError: Num(s.CoverageError),
+			WrongSign: Num(s.WrongSign), WrongSignError: Num(s.WrongSignError)})
 	}
 	o := a.Out
 	out.OutOfSample = OutOfSample{RMSE: Num(o.RMSE), R2: Num(o.R2), RMSEDifference: Num(o.RMSEDifference), Folds: []FoldError{},

@@ -28,6 +28,7 @@ type Results struct {
 	Cautions      []Note          `json:"cautions"`
 	Diagnosis     Diagnosis       `json:"diagnosis"`
 	Alternatives  []Alternative   `json:"alternatives"`
+	Simulations   Simulations     `json:"simulations"`
 	NotApplicable []NotApplicable `json:"notApplicable"`
 	Advice        Advice          `json:"advice"`
 	Notes         []Note          `json:"notes"`
@@ -384,15 +385,36 @@ type Meaning struct {
 	Text        string `json:"text"`
 }
 
-// Simulation holds what a remedy does if one truth held at the user's own design.
+// Simulation holds what an alternative does to one coefficient if one truth held at the user's own design; each figure has its Monte Carlo standard
+// error beside it.
 type Simulation struct {
-	Truth       string `json:"truth"` // as-estimated | focal-zero | focal-smallest | halfway
-	Coefficient string `json:"coefficient"`
-	Bias        Num    `json:"bias"`
-	SD          Num    `json:"sd"`
-	RMSE        Num    `json:"rmse"`
-	Coverage    Num    `json:"coverage"`
-	WrongSign   Num    `json:"wrongSign"`
+	Truth          string `json:"truth"` // as-estimated | focal-zero | focal-smallest | halfway
+	Coefficient    string `json:"coefficient"`
+	True           Num    `json:"true"`
+	Bias           Num    `json:"bias"`
+	BiasError      Num    `json:"biasError"`
+	SD             Num    `json:"sd"`
+	SDError        Num    `json:"sdError"`
+	RMSE           Num    `json:"rmse"`
+	RMSEError      Num    `json:"rmseError"`
+	Coverage       Num    `json:"coverage"` // of the nominal 95 % interval given the tuning, classical errors
+	CoverageError  Num    `json:"coverageError"`
+	WrongSign      Num    `json:"wrongSign"` // null where the true value is zero
+	WrongSignError Num    `json:"wrongSignError"`
+}
+
+// Simulations says what was simulated.
+type Simulations struct {
+	Count  int     `json:"count"` // samples for each truth; 0 beside a reason
+	Truths []Truth `json:"truths"`
+	Reason string  `json:"reason,omitempty"`
+	Text   string  `json:"text"`
+}
+
+// Truth is what the samples of a simulation are drawn from.
+type Truth struct {
+	Name string `json:"name"`
+	Text string `json:"text"`
 }
 
 // NotApplicable is a remedy that does not apply here, and why.

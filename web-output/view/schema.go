@@ -23,6 +23,7 @@ var enumerations = map[string][]string{
 	"Tuning.Rule":                   {"cross-validation", "fixed by the user"},
 	"RuleValue.Rule":                {"leave-one-out", "generalized-cross-validation", "hoerl-kennard-baldwin", "lawless-wang", "one-standard-error"},
 	"Test.Name":                     {"restriction", "single-t", "strong-mse", "weak-mse"},
+	"Truth.Name":                    {"as-estimated", "focal-zero", "focal-smallest", "halfway"},
 	"Simulation.Truth":              {"as-estimated", "focal-zero", "focal-smallest", "halfway"},
 	"Advice.Purpose":                {"explain", "predict", "describe"},
 }
@@ -47,6 +48,9 @@ var descriptions = map[string]string{
 	"OutOfSample.RMSE":                   "root of the squared errors pooled over all held-out predictions of all repeats",
 	"OutOfSample.R2":                     "1 - pooled squared error / pooled squared deviation from each training mean",
 	"FoldError.MSE":                      "null in all folds where one has fewer than ten rows, unless the study shows small cells",
+	"Simulation.Bias":                    "mean estimate less the true value",
+	"Simulation.Coverage":                "share of the samples whose nominal 95 % interval, given the tuning and with classical errors, holds the true value",
+	"Simulation.WrongSign":               "share of the samples whose estimate has the other sign; null where the true value is zero",
 	"Resampled.StandardError":            "standard deviation over resamples of the whole procedure, tuning chosen again in each; copies of a row stay in its fold",
 	"Resampled.Low":                      "2.5 % point of the resampled values",
 	"Resampled.BiasCorrected":            "bias-corrected and accelerated interval (Efron 1987)",
