@@ -16,7 +16,7 @@ import (
 	"modelmend/remedy"
 )
 
-// SimulationsBySize lets the number of simulated samples depend on the number of regressors: 2,000 a truth up to ten, then fewer with their square,
+// SimulationsBySize lets the number of simulated samples depend on the number of regressors: 1,000 a truth up to ten, then fewer with their square,
 // never under 200.
 const SimulationsBySize = -1
 
@@ -63,7 +63,7 @@ func (s *Study) simulations(p int) int {
 	if s.Simulations != SimulationsBySize {
 		return s.Simulations
 	}
-	return int(min(2000, max(200, math.Round(2000*100/float64(p*p)))))
+	return int(min(1000, max(200, math.Round(1000*100/float64(p*p)))))
 }
 
 // truths lists what the samples are drawn from.

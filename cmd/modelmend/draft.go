@@ -70,7 +70,7 @@ func draft(path string, t *dataset.Table) string {
 # constant: true
 # folds: {kind: random, count: 10, repeats: 5}
 # resamples: 999                 # 0: none
-# simulations: 2000              # samples for each truth; 0: none
+# simulations: 1000              # samples for each truth; 0: none
 # seed: 20260101
 `)
 	return b.String()

@@ -38,7 +38,7 @@ func (f *studyFlags) register(cmd *cobra.Command) {
 	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, or column:NAME")
 	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds and resamples")
 	fl.IntVar(&f.resamples, "resamples", compare.DefaultResamples, "times the whole procedure is repeated on resampled rows (0: not at all)")
-	fl.IntVar(&f.simulate, "simulations", compare.SimulationsBySize, "samples simulated for each truth (0: none; not given: by size, at most 2000)")
+	fl.IntVar(&f.simulate, "simulations", compare.SimulationsBySize, "samples simulated for each truth (0: none; not given: by size, at most 1000)")
 	fl.StringArrayVar(&f.cutoffs, "cutoff", nil, "a reference mark, such as vif=5, condition_index=30, variance_share=0.5")
 	fl.BoolVar(&f.showSmall, "show-small-cells", false, "show what rests on fewer than ten rows: names of category levels, errors of held-out parts")
 	fl.IntVar(&f.workers, "workers", 0, "cores to use (0: all); the output does not depend on it")
