@@ -2,10 +2,14 @@ package compare
 
 import (
 	"context"
+	"fmt"
 	"math"
+	"strings"
 	"sync"
 
 	"modelmend/fit/collinear"
+	"modelmend/fit/design"
+	"modelmend/fit/folds"
 	"modelmend/fit/linear"
 	"modelmend/fit/parallel"
 	"modelmend/fit/reduction"
@@ -30,6 +34,7 @@ type Alternative struct {
 	RSS          float64
 	R2           float64
 	Out          OutOfSample
+	OutApart     *OutOfSample // with folds that keep clusters or stretches of time together, beside random ones (see Comparison.Leak); else nil
 	// TuningResampled is nil where nothing is tuned, the user fixed the value, or nothing was resampled.
 	TuningResampled *TuningResampled
 	Simulated       []Simulated // by coefficient and truth
@@ -82,15 +87,14 @@ type Fold struct {
 }
 
 func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) error {
+	light := linear.EnoughForLight(c.Problem.Sample, foldsLight)
+	parts := foldParts(red, c.Plan.Window, light)
 	final := remedy.Training{Sample: c.Problem.Sample, Final: true}
-	rows := c.foldedRows(red)
-	for r := range red.Parts {
-		for f := range red.Parts[r] {
-			final.Inner = append(final.Inner, rows.split(r, f))
-		}
+	for _, p := range parts {
+		final.Inner = append(final.Inner, p.inner()...)
 	}
 	c.Alternatives = make([]*Alternative, len(choices))
-	folds, err := c.outOfSample(ctx, rows, choices, opt)
+	folds, err := c.outOfSample(ctx, parts, choices, opt)
 	if err != nil {
 		return err
 	}
@@ -100,7 +104,10 @@ func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choic
 		return err
 	}
 	for i, a := range c.Alternatives {
-		a.Out = summarize(folds[i], folds[0])
+		a.Out = summarize(folds[i], folds[0], c.Plan.Window != nil)
+	}
+	if err := c.measureLeak(ctx, choices, light, opt); err != nil {
+		return err
 	}
 	if err := c.resample(ctx, red, choices, opt); err != nil {
 		return err
@@ -118,13 +125,51 @@ func each(ctx context.Context, n, workers int, f func(i int)) error {
 	return ctx.Err()
 }
 
-// outOfSample learns every variant on the training rows of every fold and predicts the held-out ones. The inner folds of an outer
-// fold are the remaining outer folds: training rows = all minus that fold minus the inner one. Result: [variant][split].
-func (c *Comparison) outOfSample(ctx context.Context, rows *foldedRows, choices []choice, opt Options) ([][]Fold, error) {
+// Leak sets random folds, which the study asks for, beside those that keep together what it declares to belong together.
+type Leak struct {
+	Kind string // the kind of split that keeps together
+	Text string
+}
+
+// measureLeak learns all alternatives again in folds that keep clusters or stretches of time together, where the study asks for folds that do not.
+func (c *Comparison) measureLeak(ctx context.Context, choices []choice, light bool, opt Options) error {
+	kind := c.Study.keptTogether()
+	if kind == "" || (c.Plan.Kind != folds.Random && c.Plan.Kind != folds.LeaveOneOut) {
+		return nil
+	}
+	p, err := c.plan(FoldSpec{})
+	if err != nil {
+		return err
+	}
+	red, err := c.reduceAs(p, opt)
+	if err != nil {
+		return err
+	}
+	got, err := c.outOfSample(ctx, foldParts(red, p.Window, light), choices, opt)
+	if err != nil {
+		return err
+	}
+	for i, a := range c.Alternatives {
+		o := summarize(got[i], got[0], p.Window != nil)
+		a.OutApart = &o
+	}
+	what := "rows of one cluster (" + strings.Join(c.Study.Clusters, ", ") + ")"
+	if len(c.Study.Clusters) == 0 {
+		what = "neighbours in time (" + c.Study.Time + ")"
+	}
+	a := c.Alternatives[0]
+	c.Leak = &Leak{kind, fmt.Sprintf("folds of kind %s put %s on both sides of a split, so that what they share leaks into the training rows: the out-of-sample error of the model left alone is %s with them and %s with %s",
+		c.Plan.Kind, what, brief(a.Out.RMSE), brief(a.OutApart.RMSE), map[string]string{"clusters": "whole clusters held out", "blocks": "contiguous blocks of time held out", "rolling": "later periods predicted from earlier ones"}[kind])}
+	c.Notes = append(c.Notes, design.Note{Code: "folds-leak", Text: c.Leak.Text})
+	return nil
+}
+
+// outOfSample learns every variant on the training rows of every fold and predicts the held-out ones. Result: [variant][split].
+func (c *Comparison) outOfSample(ctx context.Context, repeats []*parts, choices []choice, opt Options) ([][]Fold, error) {
 	type place struct{ repeat, fold int }
 	var places []place
-	for r := range rows.red.Parts {
-		for f := range rows.red.Parts[r] {
+	for r, p := range repeats {
+		for f := range p.outer() {
 			places = append(places, place{r, f})
 		}
 	}
@@ -136,7 +181,7 @@ func (c *Comparison) outOfSample(ctx context.Context, rows *foldedRows, choices 
 	done := 0
 	err := each(ctx, len(places), opt.Workers, func(k int) {
 		p := places[k]
-		t, held := rows.training(p.repeat, p.fold)
+		t, held := repeats[p.repeat].training(p.fold)
 		for i, ch := range choices {
 			fit := ch.variant.Learn(t)
 			f := Fold{Repeat: p.repeat, Fold: p.fold, Rows: held.N, sse: held.SSE(fit.Slopes), sst: held.SST(), Chosen: math.NaN(), train: t.Sample.N}
@@ -157,7 +202,7 @@ func (c *Comparison) outOfSample(ctx context.Context, rows *foldedRows, choices 
 }
 
 // summarize pools the folds of one alternative and compares them with those of as-is.
-func summarize(folds, asIs []Fold) OutOfSample {
+func summarize(folds, asIs []Fold, rolling bool) OutOfSample {
 	o := OutOfSample{Folds: folds}
 	var sse, sst, rows, base float64
 	d := make([]float64, len(folds))
@@ -175,7 +220,11 @@ func summarize(folds, asIs []Fold) OutOfSample {
 	o.R2 = 1 - sse/sst
 	o.RMSEDifference = o.RMSE - math.Sqrt(base/rows)
 	o.TestShare = test / train
-	o.Difference = PairedInterval(d, o.TestShare)
+	if rolling {
+		o.Difference = RollingInterval(d)
+	} else {
+		o.Difference = PairedInterval(d, o.TestShare)
+	}
 	return o
 }
 
@@ -203,6 +252,40 @@ func PairedInterval(d []float64, share float64) Interval {
 	}
 	s2 /= j - 1
 	half := tail.TQuantile(0.95, j-1) * math.Sqrt(s2*(1/j+share))
+	return Interval{mean, mean - half, mean + half}
+}
+
+// RollingInterval returns the mean of the per-fold differences d_1..d_J in mean squared error, in time order, with a 95 % interval from their
+// autocorrelation-robust variance,
+//
+//	dbar +- t_{J-1} sqrt( (g_0 + 2 sum_l (1 - l/(L+1)) g_l) / J ),  L = floor(4 (J/100)^(2/9)),
+//
+// g_l their autocovariances with divisor J-1. Comparisons of nested models need care even so (Clark and West 2007). The limits are NaN for fewer than
+// three folds.
+//
+// Source: Newey and West (1987), Econometrica 55(3), 703-708, for the variance.
+func RollingInterval(d []float64) Interval {
+	j := float64(len(d))
+	mean := 0.0
+	for _, v := range d {
+		mean += v / j
+	}
+	if j < 3 {
+		return Interval{mean, math.NaN(), math.NaN()}
+	}
+	auto := func(l int) float64 {
+		g := 0.0
+		for i := l; i < len(d); i++ {
+			g += (d[i] - mean) * (d[i-l] - mean)
+		}
+		return g / (j - 1)
+	}
+	v := auto(0)
+	lags := int(4 * math.Pow(j/100, 2.0/9))
+	for l := 1; l <= lags && l < len(d); l++ {
+		v += 2 * (1 - float64(l)/float64(lags+1)) * auto(l)
+	}
+	half := tail.TQuantile(0.95, j-1) * math.Sqrt(math.Max(0, v)/j)
 	return Interval{mean, mean - half, mean + half}
 }
 

@@ -35,6 +35,9 @@ type Comparison struct {
 	Equation      *equation.Equation
 	Design        *design.Design
 	Plan          *folds.Plan // nil after Check
+	Clusters      []*grouping // declared
+	Periods       *grouping   // nil where no time is declared
+	Leak          *Leak       // nil where the folds keep together what the study says belongs together
 	Diagnosis     *collinear.Report
 	Digits        float64   // vouched for
 	Means         []float64 // of the regressors over the rows used
@@ -138,41 +141,27 @@ func (c *Comparison) reduce(ctx context.Context, opt Options, set design.Options
 	if c.Design, err = design.Build(c.Table, c.Equation, set); err != nil {
 		return nil, err
 	}
-	var split reduction.Split
+	if err := c.resolveKeys(); err != nil {
+		return nil, err
+	}
 	if folded {
-		if c.Plan, err = plan(c.Design, c.Study, c.labels); err != nil {
+		if c.Plan, err = c.plan(c.Study.Folds); err != nil {
 			return nil, err
 		}
-		split = reduction.Split{Cell: c.Plan.Cell, Cells: c.Plan.Cells, Fold: c.Plan.Fold, Counts: c.Plan.Counts}
 	}
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
-	return reduction.Reduce(c.Design.Columns(), c.Design.Y, c.Design.Constant, split, opt.Workers)
+	return c.reduceAs(c.Plan, opt)
 }
 
-// labels gives the values of a fold column as text, for the rows used.
-func (c *Comparison) labels(column string) ([]string, error) {
-	col, ok := c.Table.Column(column)
-	if !ok {
-		advice := ""
-		if near := equation.Nearest(column, c.Table.Names()); len(near) > 0 {
-			advice = "did you mean " + strings.Join(near, " or ") + "?"
-		}
-		return nil, &StudyError{"folds", fmt.Sprintf("%s has no column %q", c.Table.Name, column), advice}
+// reduceAs reduces the rows held into the folds of a plan; nil: into one total.
+func (c *Comparison) reduceAs(p *folds.Plan, opt Options) (*reduction.Reduction, error) {
+	var split reduction.Split
+	if p != nil {
+		split = reduction.Split{Cell: p.Cell, Cells: p.Cells, Fold: p.Fold, Counts: p.Counts}
 	}
-	out := make([]string, len(c.Design.Index))
-	for i, row := range c.Design.Index {
-		if col.IsMissing(row) {
-			return nil, &StudyError{"folds", fmt.Sprintf("column %q misses a value in line %d", column, c.Table.Lines[row]), "give every row a fold"}
-		}
-		if col.Kind == dataset.Text {
-			out[i] = col.Levels[col.Codes[row]]
-		} else {
-			out[i] = col.Value(row).String()
-		}
-	}
-	return out, nil
+	return reduction.Reduce(c.Design.Columns(), c.Design.Y, c.Design.Constant, split, opt.Workers)
 }
 
 func (c *Comparison) diagnose(red *reduction.Reduction, sample *linear.Sample, opt Options) error {

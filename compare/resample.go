@@ -21,7 +21,8 @@ const DefaultResamples = 999
 type Resampling struct {
 	Count int // resamples; 0: none
 	Kind  string
-	Units int // what is drawn: rows or groups of rows
+	Units int // how many there are to draw from
+	Block int // periods in a block
 	Folds int // inner folds in which tuning is re-chosen
 	// Deletions is the number of delete-a-group fits behind the acceleration.
 	Deletions int
@@ -29,8 +30,10 @@ type Resampling struct {
 
 // The kinds of resampling.
 const (
-	DrawRows   = "rows"
-	DrawGroups = "groups of rows"
+	DrawRows     = "rows"
+	DrawGroups   = "groups of rows"
+	DrawClusters = "clusters"
+	DrawBlocks   = "blocks of periods"
 )
 
 // Resampled is the spread of one coefficient when the whole procedure, tuning and selection included, is repeated on resampled rows.
@@ -63,48 +66,49 @@ const batch = 8
 
 // rowSource sums drawn units again into training rows with their inner splits.
 type rowSource struct {
-	units int
-	folds int
-	light *reduction.Units                            // nil: double-double
-	heavy func(weight []float64) *reduction.Reduction // nil: light
 	kind  string
+	units int // what is drawn
+	block int // length of the blocks of neighbouring units that are drawn together; 1: each by itself
+	folds int
+	// parts without sums; light is nil where they are in double-double.
+	window *folds.Window
+	light  *reduction.Units
+	heavy  func(weight []float64) *reduction.Reduction
 }
 
-// trainings forms the rows of several weightings of the units.
-func (s *rowSource) trainings(weights [][]float64) []remedy.Training {
-	out := make([]remedy.Training, len(weights))
+// weighted gives the parts of several weightings of the units.
+func (s *rowSource) weighted(weights [][]float64) []*parts {
+	out := make([]*parts, len(weights))
 	if s.light == nil {
 		for b, w := range weights {
 			red := s.heavy(w)
-			out[b].Sample = linear.NewSample(red, red.Total)
-			for _, part := range red.Parts[0] {
-				if part.N > 0 && part.N < red.Total.N {
-					train := linear.NewSample(red, red.Total.Minus(part))
-					out[b].Inner = append(out[b].Inner, remedy.Split{Train: train, Held: linear.NewHeldOut(red, part, train)})
-				}
-			}
+			out[b] = &parts{red: red, moments: red.Parts[0], window: s.window}
 		}
 		return out
 	}
 	for b, sums := range s.light.Sum(weights) {
-		total := added(sums)
-		out[b].Sample = linear.NewLightSample(s.light, total)
-		for _, part := range sums {
-			if part[0] > 0 && part[0] < total[0] {
-				out[b].Inner = append(out[b].Inner, lightSplit(s.light, total, part))
-			}
-		}
+		out[b] = &parts{units: s.light, sums: sums, window: s.window}
 	}
 	return out
 }
 
-// rowSource decides what is drawn: rows up to folds.Exact of them (or where groups would not fit into memory), beyond that groups of rows dealt at
-// random. A unit keeps its fold of the first repeat in every resample, so that copies of a row never lie on both sides of a split.
+// ones counts every unit once.
+func (s *rowSource) ones() []float64 {
+	w := make([]float64, s.units)
+	for i := range w {
+		w[i] = 1
+	}
+	return w
+}
+
+// rowSource decides what is drawn: whole clusters where the study declares them, blocks of neighbouring periods where it declares time, else rows up
+// to folds.Exact of them (or where groups would not fit into memory), beyond that groups of rows dealt at random. A row keeps its fold of the first
+// repeat in every resample, so that copies of a row never lie on both sides of a split.
 func (c *Comparison) rowSource(red *reduction.Reduction) *rowSource {
 	light := linear.EnoughForLight(c.Problem.Sample, resamplesLight)
 	fold, count := c.Plan.Fold[0], c.Plan.Counts[0]
-	if c.Plan.Kind == folds.Random && red.Groups != nil {
-		s := &rowSource{units: len(red.Groups), folds: count, kind: DrawGroups}
+	s := &rowSource{units: len(red.Groups), folds: count, kind: DrawGroups, block: 1, window: c.Plan.Window}
+	if c.Plan.Kind == folds.Random && red.Groups != nil && len(c.Clusters) == 0 && c.Periods == nil {
 		if light {
 			s.light = reduction.GroupUnits(red, red.Groups, fold, count)
 		} else {
@@ -117,58 +121,86 @@ func (c *Comparison) rowSource(red *reduction.Reduction) *rowSource {
 	for i := range of {
 		of[i] = fold[c.Plan.Cell[i]]
 	}
-	if count > mostTuningFolds {
-		if p, err := folds.NewRandom(n, 10, 1, c.Study.Seed, false); err == nil {
-			count = 10
+	if count > mostTuningFolds && s.window == nil {
+		if p, err := c.plan(FoldSpec{Kind: c.Study.keptTogether(), Count: 10, Repeats: 1}); err == nil && p.Window == nil {
+			s.folds = 10
 			for i := range of {
 				of[i] = int32(p.Of(0, i))
 			}
 		}
 	}
-	s := &rowSource{units: n, folds: count, kind: DrawRows}
-	unit := make([]int32, n)
-	for i := range unit {
-		unit[i] = int32(i)
-	}
-	if groups := min(folds.Groups, (1<<27)/(8*reduction.Width(red.P+1))); n > folds.Exact && groups >= 200 {
-		s.units, s.kind = groups, DrawGroups
-		rng := rand.New(rand.NewPCG(uint64(c.Study.Seed), 0x9a0b5))
-		at := make([]int, count)
-		for _, k := range rng.Perm(n) {
-			f := int(of[k])
-			// The groups of fold f are f, f+count, f+2 count, ...
-			unit[k] = int32(f + count*(at[f]%((groups-f+count-1)/count)))
-			at[f]++
-		}
+	var unit []int32
+	switch {
+	case len(c.Clusters) > 0:
+		s.kind, s.units, unit = DrawClusters, c.Clusters[0].Count, c.Clusters[0].Of
+	case c.Periods != nil:
+		s.kind, s.units, unit = DrawBlocks, c.Periods.Count, c.Periods.Of
+		s.block = blockLength(s.units)
+	default:
+		s.kind, s.units, unit = c.rowUnits(of, s.folds, red.P)
 	}
 	cols := append(append([]reduction.Column{}, c.Design.Columns()...), c.Design.Y)
 	if light {
-		s.light = reduction.NewUnits(red, cols, unit, s.units, of, count)
+		s.light = reduction.NewUnits(red, cols, unit, s.units, of, s.folds)
 	} else {
-		s.heavy = func(w []float64) *reduction.Reduction { return red.Weighted(cols, unit, of, count, w) }
+		s.heavy = func(w []float64) *reduction.Reduction { return red.Weighted(cols, unit, of, s.folds, w) }
 	}
 	return s
 }
 
-// draw gives the number of times that each unit is drawn in resample b: as many draws as units, with replacement, from a random stream of its own.
-func draw(seed int64, b, units int) []float64 {
+// rowUnits makes every row a unit, or deals the rows of each fold into groups.
+func (c *Comparison) rowUnits(of []int32, count, p int) (kind string, units int, unit []int32) {
+	n := len(of)
+	unit = make([]int32, n)
+	groups := min(folds.Groups, (1<<27)/(8*reduction.Width(p+1)))
+	if n <= folds.Exact || groups < 200 {
+		for i := range unit {
+			unit[i] = int32(i)
+		}
+		return DrawRows, n, unit
+	}
+	at := make([]int, count)
+	for _, k := range rand.New(rand.NewPCG(uint64(c.Study.Seed), 0x9a0b5)).Perm(n) {
+		f := int(of[k])
+		// The groups of fold f are f, f+count, f+2 count, ...
+		unit[k] = int32(f + count*(at[f]%((groups-f+count-1)/count)))
+		at[f]++
+	}
+	return DrawGroups, groups, unit
+}
+
+// draw gives the number of times that each unit is drawn in resample b, from a random stream of its own: as many draws as units, with replacement;
+// or blocks of neighbouring units from random starts, as many units in all.
+//
+// Source of the moving blocks: Künsch (1989), Annals of Statistics 17(3), 1217-1241.
+func draw(seed int64, b, units, block int) []float64 {
 	w := make([]float64, units)
 	rng := rand.New(rand.NewPCG(uint64(seed), 0xb0075<<32|uint64(b)))
-	for range units {
-		w[rng.IntN(units)]++
+	for left := units; left > 0; left -= block {
+		at := rng.IntN(units - block + 1)
+		for k := range min(block, left) {
+			w[at+k]++
+		}
 	}
 	return w
 }
 
-// deletions leaves out one group of units after the other: the fits behind the acceleration.
-func deletions(seed int64, units int) [][]float64 {
-	groups := min(units, mostDeletions)
+// deletions leaves out one group of units after the other, the fits behind the acceleration: groups dealt at random, or neighbours where blocks are
+// drawn.
+func deletions(seed int64, units, block int) [][]float64 {
+	groups := min((units+block-1)/block, mostDeletions)
 	out := make([][]float64, groups)
 	for g := range out {
 		out[g] = make([]float64, units)
 		for i := range out[g] {
 			out[g][i] = 1
 		}
+	}
+	if block > 1 {
+		for i := range units {
+			out[i*groups/units][i] = 0
+		}
+		return out
 	}
 	perm := rand.New(rand.NewPCG(uint64(seed), 0xde1e7e)).Perm(units)
 	for i, k := range perm {
@@ -222,11 +254,11 @@ func (c *Comparison) resample(ctx context.Context, red *reduction.Reduction, cho
 		return nil
 	}
 	source := c.rowSource(red)
-	c.Resampling = Resampling{Count: count, Kind: source.kind, Units: source.units, Folds: source.folds}
+	c.Resampling = Resampling{Count: count, Kind: source.kind, Units: source.units, Block: source.block, Folds: source.folds}
 	if source.units < 2 {
 		return nil
 	}
-	deleted := deletions(c.Study.Seed, source.units)
+	deleted := deletions(c.Study.Seed, source.units, source.block)
 	c.Resampling.Deletions = len(deleted)
 	q := red.P
 	if red.Constant {
@@ -241,19 +273,19 @@ func (c *Comparison) resample(ctx context.Context, red *reduction.Reduction, cho
 		var weights [][]float64
 		for b := k * batch; b < min(total, (k+1)*batch); b++ {
 			if b < count {
-				weights = append(weights, draw(c.Study.Seed, b, source.units))
+				weights = append(weights, draw(c.Study.Seed, b, source.units, source.block))
 			} else {
 				weights = append(weights, deleted[b-count])
 			}
 		}
-		for i, t := range source.trainings(weights) {
+		for i, p := range source.weighted(weights) {
 			if ctx.Err() != nil {
 				return
 			}
 			if b := k*batch + i; b < count {
-				drawn.learn(choices, t, b)
+				drawn.learn(choices, p.whole(), b)
 			} else {
-				jack.learn(choices, t, b-count)
+				jack.learn(choices, p.whole(), b-count)
 			}
 		}
 		if opt.Progress != nil {
@@ -431,9 +463,16 @@ func (r Resampling) Sentence() string {
 	if r.Count == 0 {
 		return "The procedure was not resampled."
 	}
-	what := fmt.Sprintf("%d rows drawn with replacement", r.Units)
-	if r.Kind == DrawGroups {
+	var what string
+	switch r.Kind {
+	case DrawRows:
+		what = fmt.Sprintf("%d rows drawn with replacement", r.Units)
+	case DrawGroups:
 		what = fmt.Sprintf("%d groups of rows, dealt at random, drawn with replacement", r.Units)
+	case DrawClusters:
+		what = fmt.Sprintf("%d whole clusters drawn with replacement", r.Units)
+	case DrawBlocks:
+		what = fmt.Sprintf("%d periods, drawn with replacement in blocks of %d neighbours", r.Units, r.Block)
 	}
 	return fmt.Sprintf("%d resamples, each of %s; a row keeps its fold, and tuning is chosen again in each by %d-fold cross-validation.", r.Count, what, r.Folds)
 }

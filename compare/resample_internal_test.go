@@ -113,7 +113,7 @@ func TestNoCopyOnBothSides(t *testing.T) {
 	}
 	source := c.rowSource(red)
 	for b := range 50 {
-		w := draw(5, b, n)
+		w := draw(5, b, n, 1)
 		sums := source.light
 		if sums == nil {
 			t.Fatal("indicators are as far from dependent as can be")
@@ -162,17 +162,17 @@ func TestSourcesAgree(t *testing.T) {
 	cols := append(c.Design.Columns(), c.Design.Y)
 	var weights [][]float64
 	for b := range 20 {
-		weights = append(weights, draw(9, b, n))
+		weights = append(weights, draw(9, b, n, 1))
 	}
 	got, want := newReplicates(len(choices), 20, 5), newReplicates(len(choices), 20, 5)
-	for b, tr := range light.trainings(weights) {
-		got.learn(choices, tr, b)
+	for b, p := range light.weighted(weights) {
+		got.learn(choices, p.whole(), b)
 	}
 	heavy := *light
 	heavy.light = nil
 	heavy.heavy = weighted(red, cols, unit, of, c.Plan.Counts[0])
-	for b, tr := range heavy.trainings(weights) {
-		want.learn(choices, tr, b)
+	for b, p := range heavy.weighted(weights) {
+		want.learn(choices, p.whole(), b)
 	}
 	for i, ch := range choices {
 		for k, v := range want.values[i] {
@@ -215,11 +215,11 @@ func TestCopiesStayTogether(t *testing.T) {
 		for i := range ones {
 			ones[i] = 1
 		}
-		original = append(original, penalty(source.trainings([][]float64{ones})[0]))
+		original = append(original, penalty(source.weighted([][]float64{ones})[0].whole()))
 		cols := append(c.Design.Columns(), c.Design.Y)
 		for b := range 20 {
-			w := draw(int64(1000+seed), b, 60)
-			together = append(together, penalty(source.trainings([][]float64{w})[0]))
+			w := draw(int64(1000+seed), b, 60, 1)
+			together = append(together, penalty(source.weighted([][]float64{w})[0].whole()))
 			// Each copy as a row of its own, dealt into folds at random.
 			var unit []int32
 			for i, times := range w {
@@ -237,7 +237,7 @@ func TestCopiesStayTogether(t *testing.T) {
 				own[i], of[i] = int32(i), int32(p.Of(0, i))
 			}
 			leaky := rowSource{units: 60, folds: 5, heavy: weighted(red, again, own, of, 5)}
-			leaking = append(leaking, penalty(leaky.trainings([][]float64{ones})[0]))
+			leaking = append(leaking, penalty(leaky.weighted([][]float64{ones})[0].whole()))
 		}
 	}
 	a, l, o := median(together), median(leaking), median(original)

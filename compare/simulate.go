@@ -265,11 +265,7 @@ func (c *Comparison) simulate(ctx context.Context, red *reduction.Reduction, cho
 		return nil
 	}
 	source := c.rowSource(red)
-	ones := make([]float64, source.units)
-	for i := range ones {
-		ones[i] = 1
-	}
-	sums := source.light.Sum([][]float64{ones})[0]
+	sums := source.weighted([][]float64{source.ones()})[0].sums
 	truths := c.truths()
 	c.Simulation.Truths, c.Simulation.Folds = truths, source.folds
 	sim := c.newSimulator(source.light, sums, truths)
@@ -289,13 +285,8 @@ func (c *Comparison) simulate(ctx context.Context, red *reduction.Reduction, cho
 			if ctx.Err() != nil {
 				return
 			}
-			total := added(folds)
-			tr := remedy.Training{Sample: linear.NewLightSample(source.light, total), Covariance: true}
-			for _, part := range folds {
-				if part[0] > 0 && part[0] < total[0] {
-					tr.Inner = append(tr.Inner, lightSplit(source.light, total, part))
-				}
-			}
+			tr := (&parts{units: source.light, sums: folds, window: source.window}).whole()
+			tr.Covariance = true
 			c.learnSimulated(tr, choices, watch, t, d, quantiles)
 		}
 		if opt.Progress != nil {

@@ -14,10 +14,10 @@ import (
 // errFew says that a streamed table has so few rows in use that they are better held.
 var errFew = errors.New("few rows")
 
-// held takes a table into memory where it cannot be passed over: fold columns, leave-one-out, or many folds.
+// held takes a table into memory where it cannot be passed over: fold columns, clusters, time, leave-one-out, or many folds.
 func held(t *dataset.Table, study *Study) (*dataset.Table, error) {
 	f := study.Folds
-	if !t.Streamed() || ((f.Kind == "" || f.Kind == "random") && f.Count <= folds.MostFolds) {
+	if !t.Streamed() || (len(study.Clusters) == 0 && study.Time == "" && (f.Kind == "" || f.Kind == "random") && f.Count <= folds.MostFolds) {
 		return t, nil
 	}
 	return t.Whole()

@@ -40,6 +40,8 @@ type Study struct {
 	Rows           string
 	Remedies       []RemedySetting
 	NoConstant     bool
+	Clusters       []string // columns: rows of one cluster belong together; two for two-way clusters
+	Time           string   // the column that orders the rows
 	Folds          FoldSpec
 	Seed           int64
 	Resamples      int // 0: none
@@ -70,12 +72,14 @@ type RemedySetting struct {
 	Off    bool
 }
 
-// FoldSpec says how rows are split. Kind "" is random, or leave-one-out under 30 rows.
+// FoldSpec says how rows are split. Kind "" is whole clusters where the study declares them; contiguous blocks of time, or rolling ones for a model
+// that is to predict, where it declares time; else random, or leave-one-out under 30 rows.
 type FoldSpec struct {
-	Kind    string // random | leave-one-out | column
+	Kind    string // random | leave-one-out | clusters | blocks | rolling | column
 	Count   int    // 0: 10
 	Repeats int    // 0: 5
 	Columns []string
+	Gap     int // rolling: periods left out between what is learned on and what is held out
 }
 
 // DefaultSeed is the seed of a study that names none.
@@ -89,7 +93,7 @@ func (s *Study) Columns() (need func(name string) bool, err error) {
 	if err != nil {
 		return nil, err
 	}
-	names := slices.Clone(s.Folds.Columns)
+	names := slices.Concat(s.Folds.Columns, s.Clusters, []string{s.Time})
 	for _, e := range append([]*equation.Expr{q.Dependent}, q.Terms...) {
 		names = append(names, e.Columns()...)
 	}
@@ -227,17 +231,41 @@ func (f FoldSpec) numbers() (count, repeats int) {
 	return count, repeats
 }
 
+// keptTogether is the kind of split that keeps together what the study declares to belong together, or "".
+func (s *Study) keptTogether() string {
+	switch {
+	case len(s.Clusters) > 0:
+		return "clusters"
+	case s.Time != "" && s.Purpose == Predict:
+		return "rolling"
+	case s.Time != "":
+		return "blocks"
+	}
+	return ""
+}
+
+// FoldKinds are the kinds of split that a study may name.
+var FoldKinds = []string{"random", "leave-one-out", "clusters", "blocks", "rolling", "column"}
+
 // plan draws the folds.
-func plan(d *design.Design, study *Study, label func(column string) ([]string, error)) (*folds.Plan, error) {
-	spec := study.Folds
+func (c *Comparison) plan(spec FoldSpec) (*folds.Plan, error) {
+	d, study := c.Design, c.Study
 	count, repeats := spec.numbers()
 	celled := len(d.Regressors) <= mostCelled
-	switch spec.Kind {
-	case "":
+	kind := spec.Kind
+	if kind == "" {
+		kind = study.keptTogether()
+	}
+	if kind == "" {
+		kind = "random"
 		if d.Rows < 30 && spec.Count == 0 {
-			return folds.NewLeaveOneOut(d.Rows)
+			kind = "leave-one-out"
 		}
-		return folds.NewRandom(d.Rows, count, repeats, study.Seed, celled)
+	}
+	if (kind == "blocks" || kind == "rolling") && c.Periods == nil {
+		return nil, &StudyError{"folds", fmt.Sprintf("kind %s needs the order of the rows", kind), "name the column that orders them with time"}
+	}
+	switch kind {
 	case "random":
 		return folds.NewRandom(d.Rows, count, repeats, study.Seed, celled)
 	case "leave-one-out":
@@ -245,10 +273,29 @@ func plan(d *design.Design, study *Study, label func(column string) ([]string, e
 			return nil, &StudyError{"folds", fmt.Sprintf("leave-one-out with %d rows would learn every tuning %d times", d.Rows, d.Rows), "use kind: random"}
 		}
 		return folds.NewLeaveOneOut(d.Rows)
+	case "clusters":
+		if len(c.Clusters) == 0 {
+			return nil, &StudyError{"folds", "kind clusters needs clusters", "name the column that tells them apart with clusters"}
+		}
+		g := c.Clusters[0]
+		if spec.Count == 0 {
+			count = min(count, g.Count)
+		}
+		return folds.NewClusters(g.Of, g.Count, count, repeats, study.Seed)
+	case "blocks":
+		if spec.Count == 0 {
+			count = min(count, c.Periods.Count)
+		}
+		return folds.NewBlocks(c.Periods.Of, c.Periods.Count, count)
+	case "rolling":
+		for spec.Count == 0 && count > 1 && folds.Segments(count) > c.Periods.Count {
+			count--
+		}
+		return folds.NewRolling(c.Periods.Of, c.Periods.Count, count, spec.Gap)
 	case "column":
 		var cols [][]string
-		for _, c := range spec.Columns {
-			l, err := label(c)
+		for _, name := range spec.Columns {
+			l, err := c.labels(name)
 			if err != nil {
 				return nil, err
 			}
@@ -256,5 +303,5 @@ func plan(d *design.Design, study *Study, label func(column string) ([]string, e
 		}
 		return folds.FromLabels(cols)
 	}
-	return nil, &StudyError{"folds", fmt.Sprintf("kind %q is not known", spec.Kind), "write random, leave-one-out or column"}
+	return nil, &StudyError{"folds", fmt.Sprintf("kind %q is not known", spec.Kind), "write one of " + strings.Join(FoldKinds, ", ")}
 }

@@ -68,6 +68,8 @@ func draft(path string, t *dataset.Table) string {
 # groups: {concept: [NAME, NAME]}  # regressors that measure one concept and may be merged
 # rows: year >= 1990             # the sample, if not all rows
 # constant: true
+# clusters: NAME                 # rows with the same value belong together
+# time: NAME                     # the column that orders the rows
 # folds: {kind: random, count: 10, repeats: 5}
 # resamples: 999                 # 0: none
 # simulations: 1000              # samples for each truth; 0: none

@@ -16,6 +16,8 @@ import (
 // studyFlags are the flags that check and compare share: every study key has one, and a flag overrides the study.
 type studyFlags struct {
 	equation, purpose, rows, folds string
+	time                           string
+	clusters                       []string
 	focal, keep, groups, smallest  []string
 	sets, skip, cutoffs            []string
 	constant, showSmall            bool
@@ -35,7 +37,9 @@ func (f *studyFlags) register(cmd *cobra.Command) {
 	fl.StringArrayVar(&f.sets, "set", nil, "fix an option of a remedy, such as ridge.penalty=0.04")
 	fl.StringSliceVar(&f.skip, "skip", nil, "remedies to leave out")
 	fl.BoolVar(&f.constant, "constant", true, "the model has a constant")
-	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, or column:NAME")
+	fl.StringSliceVar(&f.clusters, "clusters", nil, "the column whose equal values mark rows that belong together; two for two-way clusters")
+	fl.StringVar(&f.time, "time", "", "the column that orders the rows in time")
+	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, clusters:10x5, blocks:10, rolling:10, rolling:10:gap=1, or column:NAME")
 	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds and resamples")
 	fl.IntVar(&f.resamples, "resamples", compare.DefaultResamples, "times the whole procedure is repeated on resampled rows (0: not at all)")
 	fl.IntVar(&f.simulate, "simulations", compare.SimulationsBySize, "samples simulated for each truth (0: none; not given: by size, at most 1000)")
@@ -171,6 +175,12 @@ func (f *studyFlags) apply(cmd *cobra.Command, s *compare.Study) error {
 	for _, v := range f.skip {
 		s.Remedies = append(s.Remedies, compare.RemedySetting{Remedy: v, Off: true})
 	}
+	if given("clusters") {
+		s.Clusters = f.clusters
+	}
+	if given("time") {
+		s.Time = f.time
+	}
 	if given("folds") {
 		if s.Folds, err = foldSpec(f.folds); err != nil {
 			return err
@@ -228,14 +238,30 @@ func foldSpec(v string) (compare.FoldSpec, error) {
 	if c, ok := strings.CutPrefix(v, "column:"); ok && c != "" {
 		return compare.FoldSpec{Kind: "column", Columns: splitNames(c)}, nil
 	}
-	count, repeats, both := strings.Cut(v, "x")
 	f := compare.FoldSpec{Kind: "random"}
+	rest := v
+	if kind, after, found := strings.Cut(v, ":"); slices.Contains([]string{"random", "clusters", "blocks", "rolling"}, kind) {
+		if f.Kind = kind; !found {
+			return f, nil
+		}
+		rest = after
+	}
+	bad := wrongUse("--folds %q: write 10, 10x5, leave-one-out, clusters, clusters:10x5, blocks:10, rolling:10, rolling:10:gap=1, or column:NAME", v)
+	rest, gap, gapped := strings.Cut(rest, ":")
+	if gapped {
+		n, ok := strings.CutPrefix(gap, "gap=")
+		var err error
+		if f.Gap, err = strconv.Atoi(n); err != nil || !ok || f.Gap < 0 || f.Kind != "rolling" {
+			return f, bad
+		}
+	}
+	count, repeats, both := strings.Cut(rest, "x")
 	var err error
 	if f.Count, err = strconv.Atoi(count); err == nil && both {
 		f.Repeats, err = strconv.Atoi(repeats)
 	}
-	if err != nil || f.Count < 2 || (both && f.Repeats < 1) {
-		return f, wrongUse("--folds %q: write 10, 10x5, leave-one-out, or column:NAME", v)
+	if err != nil || (f.Count < 2 && !(f.Kind == "rolling" && f.Count == 1)) || (both && (f.Repeats < 1 || f.Kind == "blocks" || f.Kind == "rolling")) {
+		return f, bad
 	}
 	return f, nil
 }

@@ -195,7 +195,7 @@ func TestStudyErrorsQuoteTheLine(t *testing.T) {
 		{"data: x.csv\nequatoin: y = x\n", "2: \"equatoin\" is not a key of a study; did you mean equation?"},
 		{"data: x.csv\nequation: [y, x]\n", "2: equation must be one text"},
 		{"data: x.csv\nequation: y = x\npurpose: impress\n", "3: purpose \"impress\""},
-		{"data: x.csv\nequation: y = x\nclusters: firm\n", "3: \"clusters\" is planned but not available"},
+		{"data: x.csv\nequation: y = x\nweights: firm\n", "3: \"weights\" is planned but not available"},
 		{"data: x.csv\ndata: z.csv\n", "given twice"},
 		{"data: x.csv\nequation: y = x\nconstant: maybe\n", "3: constant must be true or false"},
 		{"data: x.csv\nequation: y = x\nfolds: {kind: sideways}\n", "\"sideways\" are not available"},

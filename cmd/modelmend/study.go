@@ -17,10 +17,10 @@ import (
 )
 
 // studyKeys are the keys of a study file in this version, in the order in which they are written.
-var studyKeys = []string{"data", "equation", "focal", "purpose", "smallest_effect", "keep", "groups", "rows", "remedies", "constant", "folds", "seed", "resamples", "simulations", "cutoffs", "show_small_cells"}
+var studyKeys = []string{"data", "equation", "focal", "purpose", "smallest_effect", "keep", "groups", "rows", "remedies", "constant", "clusters", "time", "folds", "seed", "resamples", "simulations", "cutoffs", "show_small_cells"}
 
 // laterKeys are planned and refused by name, so that nobody thinks they were heeded.
-var laterKeys = []string{"restrictions", "prior", "weights", "clusters", "unit", "time", "within", "standard_errors", "resamples", "simulations", "declared"}
+var laterKeys = []string{"restrictions", "prior", "weights", "unit", "within", "standard_errors", "declared"}
 
 // studyError quotes the line of a study file.
 type studyError struct {
@@ -143,6 +143,10 @@ func (p *studyParser) key(key, value *yaml.Node) error {
 		s.NoConstant = !v
 	case "show_small_cells":
 		s.ShowSmallCells, err = p.boolean(value, "show_small_cells")
+	case "clusters":
+		s.Clusters, err = p.names(value, "clusters")
+	case "time":
+		s.Time, err = p.text(value, "time")
 	case "folds":
 		err = p.folds(value)
 	case "seed":
@@ -281,8 +285,8 @@ func (p *studyParser) folds(value *yaml.Node) error {
 			if err != nil {
 				return err
 			}
-			if !slices.Contains([]string{"random", "leave-one-out", "column"}, kind) {
-				return p.fail(v, "folds of kind %q are not available; write random, leave-one-out or column", kind)
+			if !slices.Contains(compare.FoldKinds, kind) {
+				return p.fail(v, "folds of kind %q are not available; write one of %s", kind, strings.Join(compare.FoldKinds, ", "))
 			}
 			f.Kind = kind
 		case "count", "repeats":
@@ -298,6 +302,15 @@ func (p *studyParser) folds(value *yaml.Node) error {
 			} else {
 				f.Repeats = int(x)
 			}
+		case "gap":
+			x, err := p.number(v, "gap")
+			if err != nil {
+				return err
+			}
+			if x != math.Trunc(x) || x < 0 || x > 1e6 {
+				return p.fail(v, "gap must be a whole number of periods from 0 on")
+			}
+			f.Gap = int(x)
 		case "column":
 			names, err := p.names(v, "column")
 			if err != nil {
@@ -308,7 +321,7 @@ func (p *studyParser) folds(value *yaml.Node) error {
 				f.Kind = "column"
 			}
 		default:
-			return p.fail(k, "%q is not a key of folds; the keys are kind, count, repeats, column", k.Value)
+			return p.fail(k, "%q is not a key of folds; the keys are kind, count, repeats, gap, column", k.Value)
 		}
 		return nil
 	})
@@ -395,7 +408,13 @@ func writeStudy(s *compare.Study) string {
 	if s.NoConstant {
 		add("constant", &yaml.Node{Kind: yaml.ScalarNode, Value: "false"})
 	}
-	if f := s.Folds; f.Kind != "" || f.Count > 0 || f.Repeats > 0 || len(f.Columns) > 0 {
+	if len(s.Clusters) > 0 {
+		add("clusters", list(s.Clusters))
+	}
+	if s.Time != "" {
+		add("time", text(s.Time))
+	}
+	if f := s.Folds; f.Gap > 0 || f.Kind != "" || f.Count > 0 || f.Repeats > 0 || len(f.Columns) > 0 {
 		m := &yaml.Node{Kind: yaml.MappingNode, Style: yaml.FlowStyle}
 		put := func(k string, v *yaml.Node) { m.Content = append(m.Content, text(k), v) }
 		if f.Kind != "" {
@@ -406,6 +425,9 @@ func writeStudy(s *compare.Study) string {
 		}
 		if f.Repeats > 0 {
 			put("repeats", number(float64(f.Repeats)))
+		}
+		if f.Gap > 0 {
+			put("gap", number(float64(f.Gap)))
 		}
 		if len(f.Columns) > 0 {
 			put("column", list(f.Columns))

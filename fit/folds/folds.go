@@ -29,6 +29,7 @@ type Plan struct {
 	Cells   int
 	Cell    []int32   // by row
 	Fold    [][]int32 // [repeat][cell]
+	Window  *Window   // of a rolling split: Fold then gives pieces of time, and Counts their number
 }
 
 // Of returns the fold of a row in a repeat.

@@ -74,7 +74,7 @@ func buildRun(c *compare.Comparison, study, toolVersion string) Run {
 		run.Rows.SetAside = append(run.Rows.SetAside, SetAside{s.Reason, s.Column, s.Count})
 	}
 	rs := c.Resampling
-	run.Resampling = Resampling{rs.Count, rs.Kind, rs.Units, rs.Folds, rs.Sentence()}
+	run.Resampling = Resampling{rs.Count, rs.Kind, rs.Units, rs.Block, rs.Folds, rs.Sentence()}
 	if c.Plan == nil {
 		run.Folds.AssignmentReason = "nothing was predicted: diagnosis only"
 		return run
@@ -82,6 +82,10 @@ func buildRun(c *compare.Comparison, study, toolVersion string) Run {
 	f := &run.Folds
 	f.Kind, f.Count, f.Repeats = string(c.Plan.Kind), c.Plan.Count, c.Plan.Repeats
 	f.Inner = "the inner folds of an outer fold are the remaining outer folds of the same repeat"
+	if w := c.Plan.Window; w != nil {
+		f.Gap = w.Gap
+		f.Inner = fmt.Sprintf("time is cut into %d segments with about as many rows each; the last %d are the outer folds, and the inner folds of each are all earlier segments but the first", len(w.From), f.Count)
+	}
 	if c.Design.Rows > AssignmentLimit {
 		f.AssignmentReason = fmt.Sprintf("more than %d rows were used; the seed gives the same folds again", AssignmentLimit)
 		return run
@@ -89,7 +93,7 @@ func buildRun(c *compare.Comparison, study, toolVersion string) Run {
 	for repeat := range c.Plan.Fold {
 		row := make([]int, c.Design.Rows)
 		for i := range row {
-			row[i] = c.Plan.Of(repeat, i)
+			row[i] = c.Plan.Held(repeat, i)
 		}
 		f.Assignment = append(f.Assignment, row)
 	}
@@ -251,7 +255,10 @@ func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative
 	}
 	o := a.Out
 	out.OutOfSample = OutOfSample{RMSE: Num(o.RMSE), R2: Num(o.R2), RMSEDifference: Num(o.RMSEDifference), Folds: []FoldError{},
-		Difference: Difference{"mse", Num(o.Difference.Estimate), Num(o.Difference.Low), Num(o.Difference.High)}}
+		Difference: difference(o.Difference)}
+	if ap := a.OutApart; ap != nil {
+		out.OutOfSample.Apart = &ErrorApart{c.Leak.Kind, Num(ap.RMSE), Num(ap.R2), difference(ap.Difference), Num(ap.RMSEDifference)}
+	}
 	withheld := !c.Study.ShowSmallCells && slices.ContainsFunc(o.Folds, func(f compare.Fold) bool { return f.Rows < design.SmallCell })
 	if withheld { // all of them: a single one would follow from the others and the pooled error
 		out.OutOfSample.Reason = fmt.Sprintf("some held-out parts have fewer than %d rows: errors are not shown part by part", design.SmallCell)
@@ -267,6 +274,10 @@ func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative
 		out.Tuning = buildTuning(c, a)
 	}
 	return out
+}
+
+func difference(i compare.Interval) Difference {
+	return Difference{"mse", Num(i.Estimate), Num(i.Low), Num(i.High)}
 }
 
 func buildTuning(c *compare.Comparison, a *compare.Alternative) *Tuning {

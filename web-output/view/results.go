@@ -64,12 +64,13 @@ type Run struct {
 	LookedAt    int        `json:"lookedAt"`
 }
 
-// Folds says how rows were split. Assignment[repeat][row] is the 0-based fold of each used row in file order; it is
-// empty beside a reason above 10,000 used rows.
+// Folds says how rows were split. Assignment[repeat][row] is the 0-based fold in which each used row is held out, in file order, -1 where it never is
+// (before the first fold of a rolling split); it is empty beside a reason above 10,000 used rows.
 type Folds struct {
-	Kind             string  `json:"kind"` // random | leave-one-out | column
+	Kind             string  `json:"kind"` // random | leave-one-out | clusters | blocks | rolling | column
 	Count            int     `json:"count"`
 	Repeats          int     `json:"repeats"`
+	Gap              int     `json:"gap"` // periods left out before a held-out fold of a rolling split
 	Inner            string  `json:"inner"`
 	Assignment       [][]int `json:"assignment"`
 	AssignmentReason string  `json:"assignmentReason,omitempty"`
@@ -273,6 +274,7 @@ type Resampling struct {
 	Count int    `json:"count"` // 0: not resampled
 	Drawn string `json:"drawn"` // what is drawn with replacement
 	Units int    `json:"units"` // how many of them there are
+	Block int    `json:"block"` // periods in a block; 1 where nothing is drawn in blocks
 	Folds int    `json:"folds"` // inner folds in which tuning is chosen again
 	Text  string `json:"text"`
 }
@@ -293,6 +295,16 @@ type OutOfSample struct {
 	RMSEDifference Num         `json:"rmseDifference"`
 	Folds          []FoldError `json:"folds"`
 	Reason         string      `json:"reason,omitempty"` // why the errors in Folds are null
+	Apart          *ErrorApart `json:"apart"`            // null unless the folds asked for put what belongs together on both sides
+}
+
+// ErrorApart is the error with folds that keep clusters, or stretches of time, together: what random folds hide.
+type ErrorApart struct {
+	Kind           string     `json:"kind"` // clusters | blocks | rolling
+	RMSE           Num        `json:"rmse"`
+	R2             Num        `json:"r2"`
+	Difference     Difference `json:"difference"`
+	RMSEDifference Num        `json:"rmseDifference"`
 }
 
 // Difference is a paired difference with its overlap-corrected interval.
