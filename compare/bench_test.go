@@ -63,7 +63,7 @@ func BenchmarkNested(b *testing.B) {
 // BenchmarkResample gives the time of one resample of every alternative, tuning chosen again, on one core: the time of 200 resamples, less that of
 // none, over 200.
 func BenchmarkResample(b *testing.B) {
-	for _, size := range []struct{ n, p int }{{16, 6}, {1000, 20}, {20000, 50}} {
+	for _, size := range []struct{ n, p int }{{16, 6}, {1000, 20}, {20000, 30}, {20000, 50}} {
 		table, eq := invented(b, size.n, size.p)
 		run := func(resamples int) time.Duration {
 			s := newStudy(eq)
