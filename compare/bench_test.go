@@ -87,3 +87,17 @@ func BenchmarkResample(b *testing.B) {
 		})
 	}
 }
+
+// BenchmarkWide is the whole comparison of a thousand rows of 150 regressors with the paths of its tunings, without resamples.
+func BenchmarkWide(b *testing.B) {
+	table, eq := invented(b, 1000, 150)
+	for b.Loop() {
+		c, err := compare.Run(context.Background(), table, newStudy(eq), compare.Options{})
+		if err != nil {
+			b.Fatal(err)
+		}
+		for _, a := range c.Alternatives {
+			c.Path(a)
+		}
+	}
+}

@@ -110,6 +110,10 @@ func Diagnose(in Input) *Report {
 	}
 	r := &Report{VIF: in.Sample.InflationFactors(), CenteredVIF: in.Centered.InflationFactors()}
 	for _, g := range in.Groups {
+		if len(g.Columns) == 1 { // the column's own factor, which is at hand
+			r.GeneralizedVIF = append(r.GeneralizedVIF, r.VIF[g.Columns[0]])
+			continue
+		}
 		r.GeneralizedVIF = append(r.GeneralizedVIF, in.Sample.GeneralizedInflation(g.Columns))
 	}
 	r.CenteredIndex, _ = indexes(in.Sample)
