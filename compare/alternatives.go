@@ -39,10 +39,15 @@ type Alternative struct {
 	TuningResampled *TuningResampled
 	Simulated       []Simulated // by coefficient and truth
 
+	// Of each kind but the classical one; nil where only that is computed.
+	middles     *middles
+	covariances map[string][]float64 // of (constant, slopes), q x q
+
 	value []float64 // (constant, slopes)
 	diff  []float64 // covariance of (value - as-is) over sigma^2, q x q
 	asIs  []float64
 	exact bool // as-is has a value for every coefficient
+	step  bool // one value of a tuning path
 	s0    float64
 	t     float64 // half width of a 95 % interval in standard errors
 }
@@ -60,7 +65,8 @@ type Coefficient struct {
 	MSE       float64 // variance + max(0, bias^2 - variance of the bias estimate), with the as-is residual variance
 	Posterior float64
 	Meaning   string
-	Resampled *Resampled // nil where nothing was resampled
+	Errors    []StandardError // by kind, the one in SE first; empty for steps of a path
+	Resampled *Resampled      // nil where nothing was resampled
 
 	weights []float64 // on (constant, slopes)
 }
@@ -103,9 +109,18 @@ func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choic
 	}); err != nil {
 		return err
 	}
+	if c.ErrorKinds, err = c.errorKinds(); err != nil {
+		return err
+	}
+	if err := c.sandwiches(ctx, opt); err != nil {
+		return err
+	}
 	for i, a := range c.Alternatives {
 		a.Out = summarize(folds[i], folds[0], c.Plan.Window != nil)
+		c.state(a)
 	}
+	c.ledger()
+	c.noteErrors()
 	if err := c.measureLeak(ctx, choices, light, opt); err != nil {
 		return err
 	}
@@ -289,7 +304,7 @@ func RollingInterval(d []float64) Interval {
 	return Interval{mean, mean - half, mean + half}
 }
 
-// alternative fits one variant to all rows and states it on the user's regressors.
+// alternative fits one variant to all rows; state then puts it on the user's regressors.
 func (c *Comparison) alternative(ch choice, final remedy.Training) *Alternative {
 	sample := c.Problem.Sample
 	a := &Alternative{Key: ch.variant.Key, Remedy: ch.remedy, Variant: ch.variant}
@@ -309,7 +324,6 @@ func (c *Comparison) alternative(ch choice, final remedy.Training) *Alternative 
 	a.R2 = 1 - a.RSS/sample.YY.Float()
 	f := &remedy.Final{Problem: c.Problem, Fitted: a.Fitted, RSS: a.RSS, AsIs: c.AsIs, S: c.S, DF: c.DF}
 	a.Description = ch.variant.Describe(f)
-	c.state(a)
 	return a
 }
 
@@ -329,7 +343,12 @@ func (c *Comparison) state(a *Alternative) {
 	a.asIs = append(a.asIs, c.AsIs.Slopes...)
 	a.exact = c.AsIs.NotIdentified == nil
 	a.s0 = c.S
-	a.t = tail.TQuantile(0.95, a.DF)
+	kind := c.kind()
+	df := kind.df
+	if math.IsNaN(df) {
+		df = a.DF
+	}
+	a.t = tail.TQuantile(0.95, df)
 	q := len(a.value)
 	factor := a.Fitted.Factor
 	cross := a.Fitted.Cross
@@ -370,7 +389,11 @@ func (c *Comparison) state(a *Alternative) {
 		}
 		a.Coefficients = append(a.Coefficients, coef)
 	}
-	if !math.IsNaN(a.S) {
+	switch kind := c.kind().Name; {
+	case a.step:
+	case kind != Classical && a.covariances[kind] != nil:
+		a.Covariance = covariance(a.Description.Report, a.covariances[kind], q, 1)
+	case kind == Classical && !math.IsNaN(a.S):
 		a.Covariance = covariance(a.Description.Report, factor, q, a.S*a.S)
 	}
 	for _, e := range c.effects() {
@@ -386,6 +409,14 @@ func (c *Comparison) state(a *Alternative) {
 		coef.Meaning = dv.Meaning
 		a.Derived = append(a.Derived, coef)
 	}
+}
+
+// kind is the kind of standard error that the ladder shows.
+func (c *Comparison) kind() ErrorKind {
+	if len(c.ErrorKinds) == 0 { // diagnosis only
+		return ErrorKind{Name: Classical, df: math.NaN()}
+	}
+	return c.ErrorKinds[0]
 }
 
 // constantTouched: in an exact dependency that involves a shift the constant has no value of its own either.
@@ -459,19 +490,21 @@ func (c *Comparison) coefficient(a *Alternative, name string, w []float64, st re
 		return out
 	}
 	v := form(w, a.Fitted.Factor)
+	variance, reason := a.variance(c.kind().Name, w)
 	switch {
 	case st == remedy.Zero:
 		out.Estimate = 0
 		out.SEReason = "set to zero"
-	case math.IsNaN(a.S):
-		out.SEReason = "no degrees of freedom are left for the residual variance"
-	default:
-		out.SE = a.S * math.Sqrt(math.Max(0, v))
+	case reason != "":
+		out.SEReason = reason
+	case a.step:
+		out.SE = math.Sqrt(variance)
 		out.Low, out.High = out.Estimate-a.t*out.SE, out.Estimate+a.t*out.SE
-		if out.SE > 0 {
-			out.T = out.Estimate / out.SE
-			out.P = tail.T(out.T, a.DF)
-		}
+	}
+	if st != remedy.Zero && !a.step {
+		out.Errors = c.errors(a, w, out.Estimate)
+		e := out.Errors[0]
+		out.SE, out.Low, out.High, out.T, out.P = e.SE, e.Low, e.High, e.T, e.P
 	}
 	if a.exact && st != remedy.Different {
 		out.Bias = out.Estimate - dot(w, a.asIs)
@@ -588,7 +621,10 @@ func (c *Comparison) Path(a *Alternative) []PathPoint {
 		if t.Cross != nil {
 			f.Cross = t.Cross(i)
 		}
-		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF}
+		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF, step: true, middles: a.middles}
+		if kind := c.kind().Name; kind != Classical && a.middles.reason[kind] == "" {
+			step.covariances = map[string][]float64{kind: c.frame.between(a.middles.of[kind], f)}
+		}
 		c.state(step)
 		out[i] = PathPoint{step.Coefficients, step.Derived}
 	})

@@ -49,6 +49,8 @@ type Comparison struct {
 	S             float64 // residual standard deviation of as-is, NaN without degrees of freedom
 	DF            float64
 	Ledger        []LedgerEntry
+	ErrorKinds    []ErrorKind // computed for every alternative, the one that the ladder shows first; nil after Check
+	frame         *frame
 	Alternatives  []*Alternative
 	Resampling    Resampling
 	Simulation    Simulation

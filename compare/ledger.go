@@ -24,11 +24,24 @@ type LedgerEntry struct {
 	LowUntangled, HighUntangled float64
 	SmallestEffect              float64 // NaN where none is declared
 	ConclusionChanges           bool
+	Others                      []LedgerOther // other kinds of standard error, the chosen one first
 	Reason                      string
 	Sentence                    string
 }
 
+// LedgerOther sets the standard error of one kind other than the classical beside what it would be if the other regressors were orthogonal to this one,
+// at the same residuals: its realised factor, as the root of VIF is the classical one's.
+type LedgerOther struct {
+	Kind                        string
+	SE, Factor, SEUntangled     float64
+	Low, High                   float64
+	LowUntangled, HighUntangled float64
+	ConclusionChanges           bool
+	Reason                      string
+}
+
 func (c *Comparison) ledger() {
+	c.Ledger = nil
 	order := append([]int{}, c.Focal...)
 	for j := range c.Problem.Names {
 		if !slices.Contains(c.Focal, j) {
@@ -66,8 +79,54 @@ func (c *Comparison) entry(j int) LedgerEntry {
 	now := conclusion(e.Low, e.High, e.SmallestEffect)
 	then := conclusion(e.LowUntangled, e.HighUntangled, e.SmallestEffect)
 	e.ConclusionChanges = now != then
-	e.Sentence = c.sentence(e, name, now, then)
+	shown := LedgerOther{SE: e.SE, Factor: math.Sqrt(e.VIF), SEUntangled: e.SEUntangled, Low: e.Low, High: e.High, LowUntangled: e.LowUntangled, HighUntangled: e.HighUntangled,
+		ConclusionChanges: e.ConclusionChanges}
+	for _, k := range c.ErrorKinds {
+		if k.Name == Classical {
+			continue
+		}
+		o := c.other(k, j, e.Estimate)
+		if o.Reason == "" {
+			before, after := conclusion(o.Low, o.High, e.SmallestEffect), conclusion(o.LowUntangled, o.HighUntangled, e.SmallestEffect)
+			o.ConclusionChanges = before != after
+			if k.Name == c.kind().Name {
+				shown, now, then = o, before, after
+			}
+		}
+		e.Others = append(e.Others, o)
+	}
+	e.ConclusionChanges = shown.ConclusionChanges
+	e.Sentence = c.sentence(shown, name, now, then)
 	return e
+}
+
+// other states one kind of standard error of as-is coefficient j. Untangled, the score of the coefficient is its own regressor about its mean times the
+// residual, so that its variance is the middle's diagonal over (sum of squares)^2.
+func (c *Comparison) other(k ErrorKind, j int, estimate float64) LedgerOther {
+	a, f := c.Alternatives[0], c.frame
+	o := LedgerOther{Kind: k.Name, SE: math.NaN(), Factor: math.NaN()}
+	w := make([]float64, f.q)
+	w[f.k+j] = 1
+	v, reason := a.variance(k.Name, w)
+	if reason != "" {
+		o.Reason = reason
+		return o
+	}
+	o.SE = math.Sqrt(v)
+	squares := float64(f.n)
+	if f.k == 1 {
+		squares--
+	}
+	own := math.Sqrt(a.middles.of[k.Name].Diagonal()[f.k+j]) / squares / f.scale[j]
+	o.SEUntangled, o.Factor = own, o.SE/own
+	df := k.df
+	if math.IsNaN(df) {
+		df = c.DF
+	}
+	t := tail.TQuantile(0.95, df)
+	o.Low, o.High = estimate-t*o.SE, estimate+t*o.SE
+	o.LowUntangled, o.HighUntangled = estimate-t*own, estimate+t*own
+	return o
 }
 
 // conclusion says where an interval lies against zero and, where one is declared, the smallest effect of interest.
@@ -93,9 +152,13 @@ func conclusion(low, high, smallest float64) string {
 	return where + " and leaves open whether the effect is large enough to matter"
 }
 
-func (c *Comparison) sentence(e LedgerEntry, name, now, then string) string {
-	factor := math.Sqrt(e.VIF)
-	s := fmt.Sprintf("The interval of %s, %s to %s, %s. ", name, brief(e.Low), brief(e.High), now)
+func (c *Comparison) sentence(e LedgerOther, name, now, then string) string {
+	factor := e.Factor
+	kind := ""
+	if e.Kind != "" {
+		kind = " (" + e.Kind + " errors)"
+	}
+	s := fmt.Sprintf("The interval of %s%s, %s to %s, %s. ", name, kind, brief(e.Low), brief(e.High), now)
 	switch {
 	case len(c.Problem.Names) == 1:
 		return s + "It is the only regressor: collinearity plays no part."

@@ -55,7 +55,7 @@ func TestNestedErrorIsHonest(t *testing.T) {
 	}
 	type stat struct{ truth, nested, plain, gap []float64 }
 	stats := map[string]*stat{"as-is": {}, "ridge": {}, "components": {}, "drop-by-rule": {}}
-	for range 3 * calibrationSamples() / 2 {
+	for range calibrationSamples() {
 		c, err := Run(context.Background(), sample(n), study(5), Options{})
 		if err != nil {
 			t.Fatal(err)

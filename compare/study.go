@@ -42,6 +42,7 @@ type Study struct {
 	NoConstant     bool
 	Clusters       []string // columns: rows of one cluster belong together; two for two-way clusters
 	Time           string   // the column that orders the rows
+	Errors         ErrorSpec
 	Folds          FoldSpec
 	Seed           int64
 	Resamples      int // 0: none

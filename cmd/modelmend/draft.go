@@ -70,6 +70,7 @@ func draft(path string, t *dataset.Table) string {
 # constant: true
 # clusters: NAME                 # rows with the same value belong together
 # time: NAME                     # the column that orders the rows
+# standard_errors: classical     # classical | robust | clustered | autocorrelation
 # folds: {kind: random, count: 10, repeats: 5}
 # resamples: 999                 # 0: none
 # simulations: 1000              # samples for each truth; 0: none

@@ -16,7 +16,7 @@ import (
 // studyFlags are the flags that check and compare share: every study key has one, and a flag overrides the study.
 type studyFlags struct {
 	equation, purpose, rows, folds string
-	time                           string
+	time, errors                   string
 	clusters                       []string
 	focal, keep, groups, smallest  []string
 	sets, skip, cutoffs            []string
@@ -39,6 +39,7 @@ func (f *studyFlags) register(cmd *cobra.Command) {
 	fl.BoolVar(&f.constant, "constant", true, "the model has a constant")
 	fl.StringSliceVar(&f.clusters, "clusters", nil, "the column whose equal values mark rows that belong together; two for two-way clusters")
 	fl.StringVar(&f.time, "time", "", "the column that orders the rows in time")
+	fl.StringVar(&f.errors, "standard-errors", "", "classical, robust, robust:HC1, clustered, autocorrelation, or autocorrelation:3 (lags)")
 	fl.StringVar(&f.folds, "folds", "", "10, 10x5 (folds x repeats), leave-one-out, clusters:10x5, blocks:10, rolling:10, rolling:10:gap=1, or column:NAME")
 	fl.Int64Var(&f.seed, "seed", compare.DefaultSeed, "seed of the folds and resamples")
 	fl.IntVar(&f.resamples, "resamples", compare.DefaultResamples, "times the whole procedure is repeated on resampled rows (0: not at all)")
@@ -181,6 +182,11 @@ func (f *studyFlags) apply(cmd *cobra.Command, s *compare.Study) error {
 	if given("time") {
 		s.Time = f.time
 	}
+	if given("standard-errors") {
+		if s.Errors, err = errorSpec(f.errors); err != nil {
+			return err
+		}
+	}
 	if given("folds") {
 		if s.Folds, err = foldSpec(f.folds); err != nil {
 			return err
@@ -229,6 +235,28 @@ func applySet(s *compare.Study, v string) error {
 	s.Remedies = slices.DeleteFunc(s.Remedies, func(o compare.RemedySetting) bool { return o.Remedy == remedy && o.Option == option && !o.Off })
 	s.Remedies = append(s.Remedies, set)
 	return nil
+}
+
+func errorSpec(v string) (compare.ErrorSpec, error) {
+	kind, more, found := strings.Cut(v, ":")
+	e := compare.ErrorSpec{Kind: kind}
+	ok := slices.Contains(compare.ErrorNames, kind)
+	switch {
+	case !found:
+	case kind == compare.Robust:
+		e.Variant = more
+		ok = ok && slices.Contains(compare.Variants, more)
+	case kind == compare.Autocorrelation:
+		lags, err := strconv.Atoi(more)
+		e.Lags = &lags
+		ok = ok && err == nil && lags >= 0
+	default:
+		ok = false
+	}
+	if !ok {
+		return e, wrongUse("--standard-errors %q: write classical, robust, robust:HC1, clustered, autocorrelation, or autocorrelation:3", v)
+	}
+	return e, nil
 }
 
 func foldSpec(v string) (compare.FoldSpec, error) {

@@ -17,10 +17,10 @@ import (
 )
 
 // studyKeys are the keys of a study file in this version, in the order in which they are written.
-var studyKeys = []string{"data", "equation", "focal", "purpose", "smallest_effect", "keep", "groups", "rows", "remedies", "constant", "clusters", "time", "folds", "seed", "resamples", "simulations", "cutoffs", "show_small_cells"}
+var studyKeys = []string{"data", "equation", "focal", "purpose", "smallest_effect", "keep", "groups", "rows", "remedies", "constant", "clusters", "time", "standard_errors", "folds", "seed", "resamples", "simulations", "cutoffs", "show_small_cells"}
 
 // laterKeys are planned and refused by name, so that nobody thinks they were heeded.
-var laterKeys = []string{"restrictions", "prior", "weights", "unit", "within", "standard_errors", "declared"}
+var laterKeys = []string{"restrictions", "prior", "weights", "unit", "within", "declared"}
 
 // studyError quotes the line of a study file.
 type studyError struct {
@@ -147,6 +147,8 @@ func (p *studyParser) key(key, value *yaml.Node) error {
 		s.Clusters, err = p.names(value, "clusters")
 	case "time":
 		s.Time, err = p.text(value, "time")
+	case "standard_errors":
+		err = p.errors(value)
 	case "folds":
 		err = p.folds(value)
 	case "seed":
@@ -273,6 +275,44 @@ func (p *studyParser) remedy(key, value *yaml.Node) error {
 		}
 		s.Remedies = append(s.Remedies, set)
 		return nil
+	})
+}
+
+// errors accepts a kind, or a mapping with its settings.
+func (p *studyParser) errors(value *yaml.Node) error {
+	e := &p.study.Errors
+	kind := func(v *yaml.Node) (err error) {
+		if e.Kind, err = p.text(v, "standard_errors"); err == nil && !slices.Contains(compare.ErrorNames, e.Kind) {
+			err = p.fail(v, "standard errors of kind %q are not available; write one of %s", e.Kind, strings.Join(compare.ErrorNames, ", "))
+		}
+		return err
+	}
+	if value.Kind == yaml.ScalarNode {
+		return kind(value)
+	}
+	return p.mapping(value, "standard_errors", func(k, v *yaml.Node) (err error) {
+		switch k.Value {
+		case "kind":
+			return kind(v)
+		case "variant":
+			if e.Variant, err = p.text(v, "variant"); err == nil && !slices.Contains(compare.Variants, e.Variant) {
+				err = p.fail(v, "robust standard errors have no variant %q; write one of %s", e.Variant, strings.Join(compare.Variants, ", "))
+			}
+		case "lags":
+			var x float64
+			if x, err = p.number(v, "lags"); err == nil {
+				if x != math.Trunc(x) || x < 0 || x > 1e6 {
+					return p.fail(v, "lags must be a whole number from 0 on")
+				}
+				lags := int(x)
+				e.Lags = &lags
+			}
+		case "small_sample":
+			e.SmallSample, err = p.boolean(v, "small_sample")
+		default:
+			err = p.fail(k, "%q is not a key of standard_errors; the keys are kind, variant, lags, small_sample", k.Value)
+		}
+		return err
 	})
 }
 
@@ -413,6 +453,23 @@ func writeStudy(s *compare.Study) string {
 	}
 	if s.Time != "" {
 		add("time", text(s.Time))
+	}
+	if e := s.Errors; e != (compare.ErrorSpec{}) {
+		m := &yaml.Node{Kind: yaml.MappingNode, Style: yaml.FlowStyle}
+		put := func(k string, v *yaml.Node) { m.Content = append(m.Content, text(k), v) }
+		if e.Kind != "" {
+			put("kind", text(e.Kind))
+		}
+		if e.Variant != "" {
+			put("variant", text(e.Variant))
+		}
+		if e.Lags != nil {
+			put("lags", number(float64(*e.Lags)))
+		}
+		if e.SmallSample {
+			put("small_sample", &yaml.Node{Kind: yaml.ScalarNode, Value: "true"})
+		}
+		add("standard_errors", m)
 	}
 	if f := s.Folds; f.Gap > 0 || f.Kind != "" || f.Count > 0 || f.Repeats > 0 || len(f.Columns) > 0 {
 		m := &yaml.Node{Kind: yaml.MappingNode, Style: yaml.FlowStyle}

@@ -2,14 +2,11 @@
 //
 // Rows go in one after another: regressors x (q values, the constant's 1 first where there is one), a residual e and what tells rows apart (leverage,
 // cluster, order). Out comes the middle M of the covariance B M B' of any linear estimator B X'y. For digits, rows should stand about their means and
-// in units of their standard deviations, and B with them. It refuses a leverage of one where it would divide by zero. It stands after linear and
+// in units of their standard deviations, and B with them. It refuses a leverage of one where that would divide by zero. It stands after linear and
 // before remedy.
 package sandwich
 
-import (
-	"fmt"
-	"math"
-)
+import "math"
 
 // Kind names how the middle is formed.
 type Kind string
@@ -25,13 +22,6 @@ const (
 	Clustered       Kind = "clustered"
 	Autocorrelation Kind = "autocorrelation"
 )
-
-// LeverageError says that a row is fitted exactly whatever its value, so that its residual says nothing about its error.
-type LeverageError struct{ Row int }
-
-func (e *LeverageError) Error() string {
-	return fmt.Sprintf("row %d of those used has a leverage of one: its residual is zero whatever its error; use HC0 or HC1, or take out the regressor that singles it out", e.Row+1)
-}
 
 // Middle is a symmetric q x q matrix, its upper triangle packed by rows: the sum of w x x'.
 type Middle struct {
@@ -230,6 +220,17 @@ func (s *Series) Middle() *Middle {
 			out.packed[k] += s.lagged[i*s.q+j] + s.lagged[j*s.q+i]
 			k++
 		}
+	}
+	return out
+}
+
+// Diagonal returns the diagonal of the middle.
+func (m *Middle) Diagonal() []float64 {
+	out := make([]float64, m.Q)
+	k := 0
+	for i := range out {
+		out[i] = m.packed[k]
+		k += m.Q - i
 	}
 	return out
 }

@@ -73,6 +73,10 @@ func buildRun(c *compare.Comparison, study, toolVersion string) Run {
 	for _, s := range c.Design.SetAside {
 		run.Rows.SetAside = append(run.Rows.SetAside, SetAside{s.Reason, s.Column, s.Count})
 	}
+	run.StandardErrors = []ErrorKind{}
+	for _, k := range c.ErrorKinds {
+		run.StandardErrors = append(run.StandardErrors, ErrorKind{k.Name, k.Text, k.Warning})
+	}
 	rs := c.Resampling
 	run.Resampling = Resampling{rs.Count, rs.Kind, rs.Units, rs.Block, rs.Folds, rs.Sentence()}
 	if c.Plan == nil {
@@ -154,7 +158,15 @@ func buildDiagnosis(c *compare.Comparison) Diagnosis {
 		out.Ledger = append(out.Ledger, LedgerEntry{Coefficient: c.Problem.Names[e.Column], Focal: e.Focal, Estimate: Num(e.Estimate), ResidualSD: Num(e.S), Rows: e.Rows,
 			OwnSD: Num(e.OwnSD), VIF: Num(e.VIF), StandardError: Num(e.SE), StandardErrorUntangled: Num(e.SEUntangled), Low: Num(e.Low), High: Num(e.High),
 			LowUntangled: Num(e.LowUntangled), HighUntangled: Num(e.HighUntangled), SmallestEffect: Num(e.SmallestEffect), ConclusionChanges: e.ConclusionChanges,
-			Reason: e.Reason, Sentence: e.Sentence})
+			Others: others(e.Others), Reason: e.Reason, Sentence: e.Sentence})
+	}
+	return out
+}
+
+func others(list []compare.LedgerOther) []LedgerOther {
+	out := []LedgerOther{}
+	for _, o := range list {
+		out = append(out, LedgerOther{o.Kind, Num(o.SE), Num(o.Factor), Num(o.SEUntangled), Num(o.Low), Num(o.High), Num(o.LowUntangled), Num(o.HighUntangled), o.ConclusionChanges, o.Reason})
 	}
 	return out
 }
@@ -206,7 +218,10 @@ func correlations(c *compare.Comparison) Correlations {
 
 func buildCoefficient(c compare.Coefficient) Coefficient {
 	out := Coefficient{Name: c.Name, Estimate: Num(c.Estimate), StandardError: Num(c.SE), StandardErrorReason: c.SEReason, TRatio: Num(c.T), PValue: Num(c.P),
-		Low: Num(c.Low), High: Num(c.High), Status: string(c.Status), EstimatedBias: Num(c.Bias), EstimatedMSE: Num(c.MSE), PosteriorSD: Num(c.Posterior)}
+		Low: Num(c.Low), High: Num(c.High), Status: string(c.Status), EstimatedBias: Num(c.Bias), EstimatedMSE: Num(c.MSE), PosteriorSD: Num(c.Posterior), Errors: []StandardError{}}
+	for _, e := range c.Errors {
+		out.Errors = append(out.Errors, StandardError{e.Kind, Num(e.SE), e.Reason, Num(e.DF), Num(e.T), Num(e.P), Num(e.Low), Num(e.High)})
+	}
 	if r := c.Resampled; r != nil && c.Status != remedy.Zero {
 		out.Resampled = &Resampled{StandardError: Num(r.SE), Low: Num(r.Low), High: Num(r.High), BiasCorrected: Limits{Num(r.AccLow), Num(r.AccHigh)},
 			SharePositive: Num(r.Positive), ShareNegative: Num(r.Negative), Used: r.Used}
@@ -217,7 +232,7 @@ func buildCoefficient(c compare.Coefficient) Coefficient {
 func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative {
 	out := Alternative{Key: a.Key, Remedy: a.Remedy.Key, Label: a.Variant.Label, Summary: a.Variant.Summary, Coefficients: []Coefficient{}, Derived: []Coefficient{},
 		Covariance: [][]Num{}, ResidualSD: Num(a.S), FitRMSE: Num(math.Sqrt(a.RSS / float64(c.Design.Rows))), R2: Num(a.R2), DegreesOfFreedom: Num(a.DF),
-		StandardErrorKind: "classical", Tests: []Test{}, Meaning: []Meaning{}, Costs: []string{}, Notes: []Note{}, Removes: []string{}, Weights: []NamedValue{}, Simulation: []Simulation{}}
+		StandardErrorKind: c.ErrorKinds[0].Name, Tests: []Test{}, Meaning: []Meaning{}, Costs: []string{}, Notes: []Note{}, Removes: []string{}, Weights: []NamedValue{}, Simulation: []Simulation{}}
 	for _, k := range a.Coefficients {
 		out.Coefficients = append(out.Coefficients, buildCoefficient(k))
 		if k.Meaning != "" {
@@ -233,7 +248,7 @@ func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative
 		out.Covariance = append(out.Covariance, nums(a.Covariance[i*q:(i+1)*q]))
 	}
 	if a.Covariance == nil {
-		out.CovarianceReason = "no degrees of freedom are left for the residual variance"
+		out.CovarianceReason = a.NoCovariance()
 	}
 	for _, t := range a.Description.Tests {
 		out.Tests = append(out.Tests, Test{t.Name, Num(t.Statistic), nums(t.Degrees), Num(t.P), t.Text})

@@ -52,16 +52,17 @@ type Note struct {
 
 // Run records what was read and how it was treated.
 type Run struct {
-	Tool        string     `json:"tool"` // "modelmend"
-	ToolVersion string     `json:"toolVersion"`
-	Seed        int64      `json:"seed"`
-	Folds       Folds      `json:"folds"`
-	Resampling  Resampling `json:"resampling"`
-	Data        string     `json:"data"`     // as the user wrote it
-	DataHash    string     `json:"dataHash"` // "sha256:" and the hex digest of the bytes read
-	Rows        Rows       `json:"rows"`
-	Study       string     `json:"study"` // the effective study as YAML; running it again gives the same bytes
-	LookedAt    int        `json:"lookedAt"`
+	Tool           string      `json:"tool"` // "modelmend"
+	ToolVersion    string      `json:"toolVersion"`
+	Seed           int64       `json:"seed"`
+	Folds          Folds       `json:"folds"`
+	Resampling     Resampling  `json:"resampling"`
+	StandardErrors []ErrorKind `json:"standardErrors"` // computed for every alternative, the chosen kind first
+	Data           string      `json:"data"`           // as the user wrote it
+	DataHash       string      `json:"dataHash"`       // "sha256:" and the hex digest of the bytes read
+	Rows           Rows        `json:"rows"`
+	Study          string      `json:"study"` // the effective study as YAML; running it again gives the same bytes
+	LookedAt       int         `json:"lookedAt"`
 }
 
 // Folds says how rows were split. Assignment[repeat][row] is the 0-based fold in which each used row is held out, in file order, -1 where it never is
@@ -190,23 +191,38 @@ type Correlations struct {
 // LedgerEntry splits the standard error of one coefficient into its four causes:
 // standardError = residualSD / (sqrt(rows-1) * ownSD) * sqrt(vif).
 type LedgerEntry struct {
-	Coefficient            string `json:"coefficient"`
-	Focal                  bool   `json:"focal"`
-	Estimate               Num    `json:"estimate"`
-	ResidualSD             Num    `json:"residualSD"`
-	Rows                   int    `json:"rows"`
-	OwnSD                  Num    `json:"ownSD"`
-	VIF                    Num    `json:"vif"`
+	Coefficient            string        `json:"coefficient"`
+	Focal                  bool          `json:"focal"`
+	Estimate               Num           `json:"estimate"`
+	ResidualSD             Num           `json:"residualSD"`
+	Rows                   int           `json:"rows"`
+	OwnSD                  Num           `json:"ownSD"`
+	VIF                    Num           `json:"vif"`
+	StandardError          Num           `json:"standardError"`
+	StandardErrorUntangled Num           `json:"standardErrorUntangled"`
+	Low                    Num           `json:"low"`
+	High                   Num           `json:"high"`
+	LowUntangled           Num           `json:"lowUntangled"`
+	HighUntangled          Num           `json:"highUntangled"`
+	SmallestEffect         Num           `json:"smallestEffect"`
+	ConclusionChanges      bool          `json:"conclusionChanges"` // by the chosen kind of standard error
+	Others                 []LedgerOther `json:"others"`            // kinds other than the classical
+	Reason                 string        `json:"reason,omitempty"`
+	Sentence               string        `json:"sentence"`
+}
+
+// LedgerOther sets one kind of standard error beside what it would be untangled, at the same residuals.
+type LedgerOther struct {
+	Kind                   string `json:"kind"`
 	StandardError          Num    `json:"standardError"`
+	Factor                 Num    `json:"factor"` // realised: standardError over standardErrorUntangled
 	StandardErrorUntangled Num    `json:"standardErrorUntangled"`
 	Low                    Num    `json:"low"`
 	High                   Num    `json:"high"`
 	LowUntangled           Num    `json:"lowUntangled"`
 	HighUntangled          Num    `json:"highUntangled"`
-	SmallestEffect         Num    `json:"smallestEffect"`
 	ConclusionChanges      bool   `json:"conclusionChanges"`
 	Reason                 string `json:"reason,omitempty"`
-	Sentence               string `json:"sentence"`
 }
 
 // Alternative is one remedy fitted to the common problem.
@@ -223,7 +239,7 @@ type Alternative struct {
 	FitRMSE           Num           `json:"fitRMSE"`    // root mean squared residual of this fit on all rows
 	R2                Num           `json:"r2"`
 	DegreesOfFreedom  Num           `json:"degreesOfFreedom"`
-	StandardErrorKind string        `json:"standardErrorKind"` // classical
+	StandardErrorKind string        `json:"standardErrorKind"` // classical | robust | clustered | autocorrelation
 	OutOfSample       OutOfSample   `json:"outOfSample"`
 	Tuning            *Tuning       `json:"tuning"` // null where nothing is tuned
 	Tests             []Test        `json:"tests"`
@@ -237,19 +253,39 @@ type Alternative struct {
 
 // Coefficient is one coefficient under one alternative.
 type Coefficient struct {
-	Name                string     `json:"name"`
-	Estimate            Num        `json:"estimate"`
-	StandardError       Num        `json:"standardError"`
-	StandardErrorReason string     `json:"standardErrorReason,omitempty"`
-	TRatio              Num        `json:"tRatio"`
-	PValue              Num        `json:"pValue"`
-	Low                 Num        `json:"low"`
-	High                Num        `json:"high"`
-	Status              string     `json:"status"` // estimated | implied | zero | different quantity | not identified
-	EstimatedBias       Num        `json:"estimatedBias"`
-	EstimatedMSE        Num        `json:"estimatedMSE"`
-	PosteriorSD         Num        `json:"posteriorSD"`
-	Resampled           *Resampled `json:"resampled"` // null when the procedure was not resampled
+	Name                string          `json:"name"`
+	Estimate            Num             `json:"estimate"`
+	StandardError       Num             `json:"standardError"`
+	StandardErrorReason string          `json:"standardErrorReason,omitempty"`
+	TRatio              Num             `json:"tRatio"`
+	PValue              Num             `json:"pValue"`
+	Low                 Num             `json:"low"`
+	High                Num             `json:"high"`
+	Status              string          `json:"status"` // estimated | implied | zero | different quantity | not identified
+	EstimatedBias       Num             `json:"estimatedBias"`
+	EstimatedMSE        Num             `json:"estimatedMSE"`
+	PosteriorSD         Num             `json:"posteriorSD"`
+	Errors              []StandardError `json:"errors"`    // every kind computed, the chosen one first; empty for a coefficient set to zero or not identified
+	Resampled           *Resampled      `json:"resampled"` // null when the procedure was not resampled
+}
+
+// StandardError is the standard error of one kind.
+type StandardError struct {
+	Kind          string `json:"kind"`
+	StandardError Num    `json:"standardError"`
+	Reason        string `json:"reason,omitempty"`
+	Degrees       Num    `json:"degrees"` // of freedom of the t distribution behind the interval
+	TRatio        Num    `json:"tRatio"`
+	PValue        Num    `json:"pValue"`
+	Low           Num    `json:"low"`
+	High          Num    `json:"high"`
+}
+
+// ErrorKind says how one kind of standard error is formed.
+type ErrorKind struct {
+	Kind    string `json:"kind"`
+	Text    string `json:"text"`
+	Warning string `json:"warning,omitempty"`
 }
 
 // Resampled holds the spread of one coefficient when the whole procedure, tuning and selection included, is repeated on resampled rows.
