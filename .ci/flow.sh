@@ -2,7 +2,7 @@
 # Imports run one way. Each package may import only packages that stand before it in this list; cmd sees all.
 set -eu
 cd "$(dirname "$0")/.."
-order="fit/doubledouble fit/figures fit/parallel fit/tail fit/equation fit/dataset fit/folds fit/reduction fit/design fit/linear fit/collinear fit/sandwich remedy compare web-output/view web-output/chart web-output/paper web-output/page cmd/modelmend cmd/modelmend/demo/generate"
+order="fit/doubledouble fit/figures fit/parallel fit/tail fit/pretest fit/equation fit/dataset fit/folds fit/reduction fit/design fit/linear fit/collinear fit/sandwich remedy compare web-output/view web-output/chart web-output/paper web-output/page cmd/modelmend cmd/modelmend/demo/generate"
 place() {
   local i=0 p
   for p in $order; do

@@ -166,7 +166,7 @@ def main():
         out["coverage"].append({"r": r, "delta": delta, "cut": cut, "level": level, "covered": text(coverage(r, delta, cut, level))})
     out["worst"] = []
     for r, cut, level, start in ((0.5, 1.96, 0.95, 1.7), (0.7, 1.96, 0.95, 1.6), (0.8, 1.96, 0.95, 1.5), (0.9, 1.96, 0.95, 1.2), (0.95, 1.96, 0.95, 0.9),
-                                 (0.99, 1.96, 0.95, 0.5), (0.9, 1, 0.95, 1), (0.6, 3, 0.99, 2)):
+                                 (0.99, 1.96, 0.95, 0.5), (0.9, 1, 0.95, 1), (0.6, 3, 0.99, 2.9)):
         v, at = worst(r, cut, level, start)
         out["worst"].append({"r": r, "cut": cut, "level": level, "covered": text(v), "delta": mp.nstr(at, 9)})
     os.makedirs(HERE, exist_ok=True)

@@ -11,7 +11,7 @@ import "math"
 //
 //	I_{df/(df+t^2)}(df/2, 1/2).
 //
-// It is NaN for a NaN argument or df <= 0, and 0 for an infinite t. Relative error about 1e-14, far out 1e-13, down to 1e-280; below, it may be 0.
+// It is NaN for a NaN argument or df <= 0, and 0 for a t beyond 1e154. Relative error about 1e-14, far out 1e-13, down to 1e-280; below, it may be 0.
 // Source: Abramowitz and Stegun (1964), Handbook of Mathematical Functions, 26.7.1 with 26.5.27 (from memory).
 func T(t, df float64) float64 {
 	switch {
