@@ -63,17 +63,19 @@ func buildIn(name, text string, need func(name string) bool, piece int) (*Table,
 		r.table.Columns = append(r.table.Columns, b.column)
 	}
 	r.table.DecimalComma = comma
-	r.note()
+	r.table.Notes = notes(comma, r.builders, r.delimiter, r.blanks)
 	return r.table, nil
 }
 
-func (r *reading) note() {
-	if r.table.DecimalComma {
-		r.table.Notes = append(r.table.Notes, commaNote(r.builders, r.delimiter))
+// notes says what was decided in reading.
+func notes(comma bool, builders []*builder, delimiter byte, blanks int) (out []string) {
+	if comma {
+		out = append(out, commaNote(builders, delimiter))
 	}
-	if r.blanks > 0 {
-		r.table.Notes = append(r.table.Notes, count(r.blanks, "blank line")+" between rows left out")
+	if blanks > 0 {
+		out = append(out, count(blanks, "blank line")+" between rows left out")
 	}
+	return out
 }
 
 // header reads the names of the columns from the first line that is not blank.

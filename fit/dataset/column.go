@@ -209,7 +209,7 @@ func (b *builder) finish() {
 		c.Kind = Number
 		c.Hi, c.Lo = slices.Clip(c.Hi), slices.Clip(c.Lo)
 	default:
-		c.Kind = Empty
+		c.Kind, c.Codes = Empty, nil
 	}
 	if c.MissingAs == nil {
 		c.MissingAs = map[string]int{}

@@ -6,6 +6,7 @@ import (
 	"encoding/hex"
 	"errors"
 	"fmt"
+	"hash"
 	"io"
 	"os"
 	"path/filepath"
@@ -21,77 +22,95 @@ const (
 	mostUnpacked  = 64 << 20
 )
 
-func isCompressed(path string) bool {
-	switch strings.ToLower(filepath.Ext(path)) {
-	case ".gz", ".zst":
-		return true
-	}
-	return false
+// input is the text of a file from its first byte on, unpacked where its ending is .gz or .zst.
+type input struct {
+	path  string
+	kind  string // "gzip", "zstd", or "" for a file that is read as it is
+	size  int64  // of the file
+	file  *os.File
+	disk  io.Reader // the file, hashed as it is read
+	sum   hash.Hash
+	text  io.Reader
+	close func() // ends the unpacking
+	left  int64  // bytes that may still come out of the unpacking
 }
 
-// readCompressed reads a gzip or zstd file. The hash is that of the file as it is on disk.
-func readCompressed(f *os.File, path string, need func(name string) bool) (*Table, error) {
-	info, err := f.Stat()
-	if err != nil {
-		return nil, openError(path, err)
+func isCompressed(path string) bool { return packing(path) != "" }
+
+// packing names the way a file is compressed, "" for none.
+func packing(path string) string {
+	switch strings.ToLower(filepath.Ext(path)) {
+	case ".gz":
+		return "gzip"
+	case ".zst":
+		return "zstd"
 	}
-	sum := sha256.New()
-	packed := io.TeeReader(f, sum)
-	var plain io.Reader
-	if strings.EqualFold(filepath.Ext(path), ".gz") {
-		z, err := gzip.NewReader(packed)
-		if err != nil {
-			return nil, damaged(path, "gzip", err)
-		}
-		defer z.Close()
-		plain = z
-	} else {
-		z, err := zstd.NewReader(packed, zstd.WithDecoderConcurrency(1), zstd.WithDecoderMaxMemory(256<<20))
-		if err != nil {
-			return nil, damaged(path, "zstd", err)
-		}
-		defer z.Close()
-		plain = z
-	}
-	limit := max(int64(mostUnpacked), info.Size()*mostExpansion)
-	t, err := read(&bounded{r: plain, left: limit, path: path}, path, 0, need)
+	return ""
+}
+
+// openInput opens a file for one reading.
+func openInput(path string) (in *input, err error) {
+	f, info, err := openFile(path)
 	if err != nil {
-		var known *FileError
-		if errors.As(err, &known) && known.Reason == Unreadable && known.Err != nil {
-			if errors.As(known.Err, &known) {
-				return nil, known
-			}
-			return nil, damaged(path, "compressed", known.Err)
-		}
 		return nil, err
 	}
-	if _, err := io.Copy(io.Discard, packed); err != nil { // what follows the last block belongs to the file
-		return nil, openError(path, err)
+	defer func() {
+		if err != nil {
+			f.Close()
+		}
+	}()
+	in = &input{path: path, kind: packing(path), size: info.Size(), file: f, sum: sha256.New(), close: func() {}}
+	in.disk = io.TeeReader(f, in.sum)
+	in.text = in.disk
+	switch in.kind {
+	case "gzip":
+		z, err := gzip.NewReader(in.disk)
+		if err != nil {
+			return nil, damaged(path, in.kind, err)
+		}
+		in.text, in.close = z, func() { z.Close() }
+	case "zstd":
+		z, err := zstd.NewReader(in.disk, zstd.WithDecoderConcurrency(1), zstd.WithDecoderMaxMemory(256<<20))
+		if err != nil {
+			return nil, damaged(path, in.kind, err)
+		}
+		in.text, in.close = z, z.Close
 	}
-	t.Hash = hex.EncodeToString(sum.Sum(nil))
-	return t, nil
+	in.left = max(int64(mostUnpacked), in.size*mostExpansion)
+	return in, nil
+}
+
+// Read gives text. A compressed file ends with a *FileError where it is damaged, or once more has come out of it than a table would give.
+func (in *input) Read(p []byte) (int, error) {
+	if in.kind == "" {
+		return in.text.Read(p)
+	}
+	if in.left <= 0 {
+		return 0, &FileError{Path: in.path, Reason: TooLarge, Found: fmt.Sprintf("a file that unpacks to more than %d times its size", mostExpansion),
+			Advice: "if it is a table all the same, unpack it first"}
+	}
+	n, err := in.text.Read(p[:min(int64(len(p)), in.left)])
+	in.left -= int64(n)
+	if err != nil && !errors.Is(err, io.EOF) {
+		err = damaged(in.path, in.kind, err)
+	}
+	return n, err
+}
+
+// hash returns the hash of the file as it is on disk, once the text has been read: what follows the text belongs to the file.
+func (in *input) hash() (string, error) {
+	if _, err := io.Copy(io.Discard, in.disk); err != nil {
+		return "", openError(in.path, err)
+	}
+	return hex.EncodeToString(in.sum.Sum(nil)), nil
+}
+
+// Close ends the reading.
+func (in *input) Close() {
+	in.close()
+	in.file.Close()
 }
 
 func damaged(path, kind string, err error) error {
 	return &FileError{Path: path, Reason: Unreadable, Found: fmt.Sprintf("a damaged %s file (%v)", kind, err), Advice: "fetch or write it again"}
-}
-
-// bounded ends with an error once more has come out than a table would give.
-type bounded struct {
-	r    io.Reader
-	left int64
-	path string
-}
-
-func (b *bounded) Read(p []byte) (int, error) {
-	if b.left <= 0 {
-		return 0, &FileError{Path: b.path, Reason: TooLarge, Found: fmt.Sprintf("a file that unpacks to more than %d times its size", mostExpansion),
-			Advice: "if it is a table all the same, unpack it first"}
-	}
-	if int64(len(p)) > b.left {
-		p = p[:b.left]
-	}
-	n, err := b.r.Read(p)
-	b.left -= int64(n)
-	return n, err
 }

@@ -62,21 +62,33 @@ func (r *reading) sideBySide(pieces []*reading) error {
 			return err
 		}
 	}
-	waiting := 0 // blank lines that count once a row follows
+	var blanks blankLines
 	for _, p := range pieces {
 		r.table.Rows += p.table.Rows
-		if p.table.Rows > 0 {
-			r.blanks += waiting + p.blanks
-			waiting = 0
-		}
-		waiting += p.pending
+		blanks.take(p)
 	}
+	r.blanks = blanks.between
 	r.table.Lines = make([]int, 0, r.table.Rows)
 	for _, p := range pieces {
 		r.table.Lines = append(r.table.Lines, p.table.Lines...)
 	}
 	parallel.Each(len(r.builders), 0, func(j int) { r.join(j, pieces) })
 	return nil
+}
+
+// blankLines counts the blank lines between the rows of pieces.
+type blankLines struct {
+	between int
+	waiting int // they count once a row follows
+}
+
+// take adds those of the next piece.
+func (b *blankLines) take(p *reading) {
+	if p.table.Rows > 0 {
+		b.between += b.waiting + p.blanks
+		b.waiting = 0
+	}
+	b.waiting += p.pending
 }
 
 // join makes one column of the pieces' columns.

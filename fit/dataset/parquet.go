@@ -5,11 +5,13 @@ import (
 	"encoding/hex"
 	"errors"
 	"fmt"
+	"hash"
 	"io"
 	"math"
 	"math/big"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"time"
@@ -19,44 +21,139 @@ import (
 
 	"modelmend/fit/doubledouble"
 	"modelmend/fit/figures"
+	"modelmend/fit/parallel"
 )
 
 func isParquet(path string) bool { return strings.EqualFold(filepath.Ext(path), ".parquet") }
 
 // readParquet reads the columns that need accepts from a Parquet file: numbers of every width, decimals with every digit, truth values as 0 and 1, text, and
 // dates as text in ISO form. Nested and repeated columns are refused when they are asked for.
-func readParquet(f *os.File, path string, need func(name string) bool) (t *Table, err error) {
+func readParquet(path string, need func(name string) bool) (*Table, error) {
+	p, err := openParquet(path, need)
+	if err != nil {
+		return nil, err
+	}
+	defer p.close()
+	r, err := p.next(p.table.Rows)
+	if err != nil {
+		return nil, err
+	}
+	t := p.table
+	t.Lines, t.Hash = r.table.Lines, p.hash()
+	for j, b := range r.builders {
+		b.finish()
+		t.Columns[j] = b.column
+	}
+	return t, nil
+}
+
+// parquetBytes is what the columns that need accepts take as numbers; 0 for a file that cannot be opened.
+func parquetBytes(path string, need func(name string) bool) float64 {
+	p, err := openParquet(path, need)
+	if err != nil {
+		return 0
+	}
+	defer p.close()
+	return 8 * float64(p.table.Rows) * float64(p.asked)
+}
+
+// parquetSource reads a Parquet file in pieces of so many rows.
+type parquetSource struct {
+	path string
+	need func(name string) bool
+	rows int
+}
+
+// firstParquet takes the columns and their kinds from the schema.
+func firstParquet(path string, need func(name string) bool, size int) (*Table, error) {
+	p, err := openParquet(path, need)
+	if err != nil {
+		return nil, err
+	}
+	defer p.close()
+	t := p.table
+	t.stream = &stream{source: &parquetSource{path: path, need: need, rows: max(1, size/(8*max(1, p.asked)))}, path: path, need: need}
+	return t, nil
+}
+
+// pieces gives the rows of all row groups.
+func (s *parquetSource) pieces(t *Table, give func(*reading) bool) (hash string, err error) {
+	p, err := openParquet(s.path, s.need)
+	if err != nil {
+		return "", err
+	}
+	defer p.close()
+	if !slices.Equal(p.table.Names(), t.Names()) {
+		return "", &FileError{Path: s.path, Reason: Unreadable, Found: "other columns than before", Advice: "leave the file as it is while it is read"}
+	}
+	for p.at < p.table.Rows {
+		r, err := p.next(min(s.rows, p.table.Rows-p.at))
+		if err != nil || !give(r) {
+			return "", err
+		}
+	}
+	return p.hash(), nil
+}
+
+// parquetFile is an open Parquet file that is read from its first row to its last.
+type parquetFile struct {
+	path    string
+	file    *os.File
+	size    int64
+	sum     hash.Hash
+	hashed  int64            // bytes
+	table   *Table           // the columns with the kinds of the schema, and how many rows there are
+	columns []*parquetColumn // nil where a column is skipped
+	asked   int              // columns that are not
+	at      int              // rows read
+}
+
+// openParquet reads the schema.
+func openParquet(path string, need func(name string) bool) (p *parquetFile, err error) {
+	f, info, err := openFile(path)
+	if err != nil {
+		return nil, err
+	}
+	p = &parquetFile{path: path, file: f, size: info.Size(), sum: sha256.New(), table: &Table{Name: path, Delimiter: ","}}
+	if err := guarded(path, func() error { return p.schema(need) }); err != nil {
+		f.Close()
+		return nil, err
+	}
+	return p, nil
+}
+
+// guarded makes an error of a panic, which can be the library's answer to a damaged file.
+func guarded(path string, f func() error) (err error) {
 	defer func() {
-		// The library's answer to a damaged file can be a panic.
 		if r := recover(); r != nil {
-			t, err = nil, damaged(path, "Parquet", fmt.Errorf("%v", r))
+			err = damaged(path, "Parquet", fmt.Errorf("%v", r))
 		}
 	}()
-	info, err := f.Stat()
+	return f()
+}
+
+func (p *parquetFile) schema(need func(name string) bool) error {
+	file, err := parquet.OpenFile(p.file, p.size, parquet.SkipPageIndex(true), parquet.SkipBloomFilters(true))
 	if err != nil {
-		return nil, openError(path, err)
+		return damaged(p.path, "Parquet", err)
 	}
-	sum := sha256.New()
-	if _, err := io.Copy(sum, f); err != nil {
-		return nil, openError(path, err)
+	t := p.table
+	if t.Rows = int(file.NumRows()); t.Rows == 0 {
+		return &FileError{Path: p.path, Reason: HeaderOnly, Found: "column names and no rows", Advice: "give a file with rows"}
 	}
-	file, err := parquet.OpenFile(f, info.Size(), parquet.SkipPageIndex(true), parquet.SkipBloomFilters(true))
-	if err != nil {
-		return nil, damaged(path, "Parquet", err)
-	}
-	t = &Table{Name: path, Delimiter: ",", Hash: hex.EncodeToString(sum.Sum(nil)), Rows: int(file.NumRows())}
-	if t.Rows == 0 {
-		return nil, &FileError{Path: path, Reason: HeaderOnly, Found: "column names and no rows", Advice: "give a file with rows"}
+	if t.Rows < 0 {
+		return damaged(p.path, "Parquet", fmt.Errorf("%d rows", t.Rows))
 	}
 	seen := map[string]bool{}
 	for _, field := range file.Schema().Fields() {
 		name := field.Name()
 		if strings.TrimSpace(name) == "" || seen[name] {
-			return nil, &FileError{Path: path, Reason: OtherFormat, Found: fmt.Sprintf("a column named %s, empty or for a second time", figures.Quoted(name)), Advice: "give every column a name of its own"}
+			return &FileError{Path: p.path, Reason: OtherFormat, Found: fmt.Sprintf("a column named %s, empty or for a second time", figures.Quoted(name)), Advice: "give every column a name of its own"}
 		}
 		seen[name] = true
 		c := &Column{Name: name, Kind: Skipped}
 		t.Columns = append(t.Columns, c)
+		p.columns = append(p.columns, nil)
 		if need != nil && !need(name) {
 			continue
 		}
@@ -64,36 +161,111 @@ func readParquet(f *os.File, path string, need func(name string) bool) (t *Table
 			if need == nil {
 				continue // nobody asked for it by name
 			}
-			return nil, &FileError{Path: path, Reason: OtherFormat, Found: fmt.Sprintf("the column %s, which holds lists or records", figures.Quoted(name)), Advice: "unfold it into plain columns first"}
+			return &FileError{Path: p.path, Reason: OtherFormat, Found: fmt.Sprintf("the column %s, which holds lists or records", figures.Quoted(name)), Advice: "unfold it into plain columns first"}
 		}
-		if err := parquetColumn(file, field, t.Rows, c); err != nil {
-			return nil, damaged(path, "Parquet", fmt.Errorf("column %s: %w", name, err))
+		leaf, ok := file.Schema().Lookup(name)
+		if !ok {
+			return damaged(p.path, "Parquet", fmt.Errorf("column %s: it is not in the schema", name))
+		}
+		column := &parquetColumn{field: field, buf: make([]parquet.Value, 1024)}
+		for _, group := range file.RowGroups() {
+			column.chunks = append(column.chunks, group.ColumnChunks()[leaf.ColumnIndex])
+		}
+		p.columns[len(p.columns)-1] = column
+		p.asked++
+		c.Kind = Number
+		if _, text := parquetReader(field, c); text != nil {
+			c.Kind = Text
 		}
 	}
-	t.Lines = make([]int, t.Rows)
-	for i := range t.Lines {
-		t.Lines[i] = i + 1 // there are no lines: rows are counted
-	}
-	return t, nil
+	return nil
 }
 
-// parquetColumn reads one column of all row groups.
-func parquetColumn(file *parquet.File, field parquet.Field, rows int, c *Column) error {
-	leaf, ok := file.Schema().Lookup(field.Name())
-	if !ok {
-		return errors.New("it is not in the schema")
+// next reads so many rows, the columns side by side.
+func (p *parquetFile) next(rows int) (r *reading, err error) {
+	err = guarded(p.path, func() error { // for the room that a damaged count of rows would take
+		r = p.table.piece(rows)
+		for i := range rows {
+			r.table.Lines = append(r.table.Lines, p.at+i+1) // there are no lines: rows are counted
+		}
+		return nil
+	})
+	if err != nil {
+		return nil, err
 	}
-	number, text := parquetReader(field, c)
-	b := &builder{column: c, delimiter: ',', capacity: rows}
-	c.Kind = 0
-	if text != nil {
-		b.texts = 1
-		b.startCodes()
+	r.table.Rows = rows
+	p.at += rows
+	errs := make([]error, len(p.columns)+1)
+	parallel.Each(len(errs), 0, func(j int) {
+		switch {
+		case j == len(p.columns):
+			errs[j] = p.hashOn()
+		case p.columns[j] != nil:
+			errs[j] = guarded(p.path, func() error {
+				err := p.columns[j].read(r.builders[j], rows, p.at == p.table.Rows)
+				if err != nil {
+					return damaged(p.path, "Parquet", fmt.Errorf("column %s: %w", p.table.Columns[j].Name, err))
+				}
+				return nil
+			})
+		}
+	})
+	for _, err := range errs {
+		if err != nil {
+			return nil, err
+		}
 	}
-	values := make([]parquet.Value, 4096)
-	for _, group := range file.RowGroups() {
-		pages := group.ColumnChunks()[leaf.ColumnIndex].Pages()
-		err := eachValue(pages, values, func(v parquet.Value) {
+	return r, nil
+}
+
+// hashOn takes the share of the file that the rows read make up into the hash.
+func (p *parquetFile) hashOn() error {
+	to := p.size
+	if p.at < p.table.Rows {
+		to = int64(float64(p.size) * float64(p.at) / float64(p.table.Rows))
+	}
+	n, err := io.CopyN(p.sum, p.file, to-p.hashed)
+	p.hashed += n
+	if err != nil {
+		return openError(p.path, err)
+	}
+	return nil
+}
+
+// hash returns the hash of the file once the last row has been read.
+func (p *parquetFile) hash() string { return hex.EncodeToString(p.sum.Sum(nil)) }
+
+func (p *parquetFile) close() {
+	for _, c := range p.columns {
+		if c != nil && c.pages != nil {
+			guarded(p.path, c.pages.Close)
+		}
+	}
+	p.file.Close()
+}
+
+// parquetColumn reads the values of one column through all row groups.
+type parquetColumn struct {
+	field  parquet.Field
+	chunks []parquet.ColumnChunk // not yet begun
+	pages  parquet.Pages         // of the chunk at work
+	page   parquet.Page          // at work
+	values parquet.ValueReader   // of the page; nil before the first and between pages
+	buf    []parquet.Value
+}
+
+// read appends the next values, so many, to b; last says that none may follow them.
+func (c *parquetColumn) read(b *builder, rows int, last bool) error {
+	number, text := parquetReader(c.field, b.column)
+	for b.rows < rows {
+		values, err := c.next(rows - b.rows)
+		if errors.Is(err, io.EOF) {
+			return fmt.Errorf("%d values are missing", rows-b.rows)
+		}
+		if err != nil {
+			return err
+		}
+		for _, v := range values {
 			switch {
 			case v.IsNull():
 				b.add(cell{}, 0)
@@ -104,60 +276,71 @@ func parquetColumn(file *parquet.File, field parquet.Field, rows int, c *Column)
 				x := number(v)
 				if math.IsNaN(x.Hi) {
 					b.add(cell{}, 0)
-					return
+					continue
 				}
 				b.column.NumericCells++
 				b.makeRoom()
 				b.store(x.Hi, x.Lo)
 				b.rows++
 			}
-		})
-		if cerr := pages.Close(); err == nil {
-			err = cerr
-		}
-		if err != nil {
-			return err
 		}
 	}
-	if b.rows != rows {
-		return fmt.Errorf("%d values for %d rows", b.rows, rows)
+	if text != nil && len(b.column.Levels) == 0 {
+		b.texts = 0 // no text after all
 	}
-	decimals := c.Decimals
-	if text != nil && len(c.Levels) == 0 {
-		b.texts = 0
-		c.Codes = nil
-	}
-	b.finish()
-	if c.Kind == Number {
-		c.Decimals = decimals
+	if last {
+		if _, err := c.next(1); !errors.Is(err, io.EOF) {
+			return errors.New("more values than rows")
+		}
 	}
 	return nil
 }
 
-func eachValue(pages parquet.Pages, buf []parquet.Value, f func(parquet.Value)) error {
+// next returns the next values, at most so many, which hold until it is called again; io.EOF after the last.
+func (c *parquetColumn) next(most int) ([]parquet.Value, error) {
 	for {
-		page, err := pages.ReadPage()
-		if errors.Is(err, io.EOF) {
-			return nil
-		}
-		if err != nil {
-			return err
-		}
-		reader := page.Values()
-		for {
-			n, err := reader.ReadValues(buf)
-			for _, v := range buf[:n] {
-				f(v)
+		if c.values != nil {
+			n, err := c.values.ReadValues(c.buf[:min(most, len(c.buf))])
+			if err != nil && !errors.Is(err, io.EOF) {
+				return nil, err
 			}
-			if errors.Is(err, io.EOF) {
-				break
+			if n > 0 {
+				return c.buf[:n], nil
 			}
 			if err != nil {
-				return err
+				parquet.Release(c.page)
+				c.values = nil
 			}
+			continue
 		}
-		parquet.Release(page)
+		if err := c.nextPage(); err != nil {
+			return nil, err
+		}
 	}
+}
+
+// nextPage takes the next page of the chunk at work, or goes to the next chunk.
+func (c *parquetColumn) nextPage() (err error) {
+	if c.pages != nil {
+		c.page, err = c.pages.ReadPage()
+		if err == nil {
+			c.values = c.page.Values()
+			return nil
+		}
+		if !errors.Is(err, io.EOF) {
+			return err
+		}
+		pages := c.pages
+		c.pages = nil
+		if err := pages.Close(); err != nil {
+			return err
+		}
+	}
+	if len(c.chunks) == 0 {
+		return io.EOF
+	}
+	c.pages, c.chunks = c.chunks[0].Pages(), c.chunks[1:]
+	return nil
 }
 
 // parquetReader says how a column's values are read, as numbers or as text, and how many decimals they have.

@@ -2,6 +2,8 @@ package dataset
 
 import (
 	"errors"
+	"fmt"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"strings"
@@ -26,10 +28,10 @@ type wageRow struct {
 	Married    int32   `parquet:"married"`
 }
 
-func writeParquet[T any](t *testing.T, rows []T) string {
+func writeParquet[T any](t *testing.T, rows []T, options ...parquet.WriterOption) string {
 	t.Helper()
 	path := filepath.Join(t.TempDir(), "t.parquet")
-	if err := parquet.WriteFile(path, rows); err != nil {
+	if err := parquet.WriteFile(path, rows, options...); err != nil {
 		t.Fatal(err)
 	}
 	return path
@@ -126,6 +128,63 @@ func TestParquetTypes(t *testing.T) {
 	}
 }
 
+// TestParquetStreamed: row groups, pages and pieces of any size give the rows, kinds, levels and counts of the table held.
+func TestParquetStreamed(t *testing.T) {
+	rng := rand.New(rand.NewPCG(8, 9))
+	rows := make([]typedRow, 700)
+	for i := range rows {
+		r := &rows[i]
+		*r = typedRow{Price: rng.Int64N(1e6), Single: float32(rng.IntN(100)) / 8, Big: int64(rng.Uint64()), Day: int32(rng.IntN(40)), When: time.Unix(rng.Int64N(1e9), 0)}
+		if x := rng.NormFloat64(); i > 300 && rng.IntN(5) > 0 {
+			r.Ratio = &x
+		}
+		if s := []string{"north", "south", "", "NA", "7"}[rng.IntN(5)]; rng.IntN(4) > 0 {
+			r.Note = &s
+		}
+	}
+	for _, group := range []int64{1 << 20, 97} {
+		path := writeParquet(t, rows, parquet.MaxRowsPerRowGroup(group), parquet.PageBufferSize(300))
+		for _, need := range []func(string) bool{nil, func(n string) bool { return n != "price" && n != "note" && n != "list" }} {
+			whole, err := ReadColumns(path, need)
+			if err != nil {
+				t.Fatal(err)
+			}
+			for _, size := range []int{1, 999, 1 << 20} {
+				tb, err := OpenInPieces(path, need, size)
+				if err != nil {
+					t.Fatal(err)
+				}
+				sameStreamed(t, fmt.Sprintf("groups of %d, pieces of %d", group, size), tb, whole)
+				if want := hashOf(t, path); tb.Hash != want || whole.Hash != want {
+					t.Errorf("hash %s, held %s, want %s", tb.Hash, whole.Hash, want)
+				}
+			}
+		}
+	}
+	_, err := OpenInPieces(writeParquet(t, rows), func(n string) bool { return n == "list" }, 100)
+	if err == nil || !strings.Contains(err.Error(), "lists or records") {
+		t.Errorf("a list column that is asked for: %v", err)
+	}
+	if _, err := OpenInPieces(writeParquet(t, rows[:0]), nil, 100); err == nil || !strings.Contains(err.Error(), "no rows") {
+		t.Errorf("no rows: %v", err)
+	}
+}
+
+// TestParquetReplaced: a file that becomes another between two passes is refused.
+func TestParquetReplaced(t *testing.T) {
+	path := writeParquet(t, make([]typedRow, 50))
+	tb, err := OpenInPieces(path, nil, 100)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := parquet.WriteFile(path, make([]wageRow, 50)); err != nil {
+		t.Fatal(err)
+	}
+	if err := tb.Each(func(*Table) error { return nil }); err == nil || !strings.Contains(err.Error(), "other columns than before") {
+		t.Errorf("another file gives %v", err)
+	}
+}
+
 // TestParquetDamaged: cut and scrambled files are named, whatever the library does with them.
 func TestParquetDamaged(t *testing.T) {
 	x := 0.1
@@ -141,9 +200,17 @@ func TestParquetDamaged(t *testing.T) {
 			if err := os.WriteFile(path, content, 0o600); err != nil {
 				t.Fatal(err)
 			}
-			if _, err := ReadFile(path); err != nil {
+			_, held := ReadFile(path)
+			tb, streamed := OpenInPieces(path, nil, 50)
+			if streamed == nil {
+				streamed = tb.Each(func(*Table) error { return nil })
+			}
+			if (held == nil) != (streamed == nil) {
+				t.Errorf("byte %d: held %v, streamed %v", n, held, streamed)
+			}
+			for _, err := range []error{held, streamed} {
 				var f *FileError
-				if !errors.As(err, &f) {
+				if err != nil && !errors.As(err, &f) {
 					t.Fatalf("byte %d: %v is not a *FileError", n, err)
 				}
 			}

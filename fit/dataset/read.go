@@ -35,28 +35,50 @@ func ReadColumns(path string, need func(name string) bool) (*Table, error) {
 				Advice: "this version reads CSV and TSV, plain or as .gz or .zst, and Parquet, so save the table as one of these first"}
 		}
 	}
-	f, err := os.Open(path)
-	if err != nil {
-		return nil, openError(path, err)
-	}
-	defer f.Close()
-	info, err := f.Stat()
-	if err != nil {
-		return nil, openError(path, err)
-	}
-	if info.IsDir() {
-		return nil, &FileError{Path: path, Reason: Directory, Found: "a folder", Advice: "give the path of a file in it"}
-	}
 	if isParquet(path) {
-		return readParquet(f, path, need)
+		return readParquet(path, need)
 	}
-	if isCompressed(path) {
-		return readCompressed(f, path, need)
+	in, err := openInput(path)
+	if err != nil {
+		return nil, err
 	}
-	return read(f, path, info.Size(), need)
+	defer in.Close()
+	size := in.size
+	if in.kind != "" {
+		size = 0 // that of the text is not known
+	}
+	t, err := read(in, path, size, need)
+	if err != nil {
+		return nil, err
+	}
+	t.Hash, err = in.hash()
+	return t, err
 }
 
+// openFile opens a file that is no folder.
+func openFile(path string) (*os.File, fs.FileInfo, error) {
+	f, err := os.Open(path)
+	if err != nil {
+		return nil, nil, openError(path, err)
+	}
+	info, err := f.Stat()
+	if err != nil {
+		f.Close()
+		return nil, nil, openError(path, err)
+	}
+	if info.IsDir() {
+		f.Close()
+		return nil, nil, &FileError{Path: path, Reason: Directory, Found: "a folder", Advice: "give the path of a file in it"}
+	}
+	return f, info, nil
+}
+
+// openError says why a file cannot be opened or read on; an error that says so already stays as it is.
 func openError(path string, err error) error {
+	var known *FileError
+	if errors.As(err, &known) {
+		return known
+	}
 	if errors.Is(err, fs.ErrNotExist) {
 		return &FileError{Path: path, Reason: NotFound, Found: "no such file", Advice: "check the path and the folder you are in", Err: err}
 	}
@@ -68,9 +90,16 @@ func openError(path string, err error) error {
 
 // Read reads the table that r gives; name stands for the path in messages and in the table. Errors are those of
 // ReadFile.
-func Read(r io.Reader, name string) (*Table, error) { return read(r, name, 0, nil) }
+func Read(r io.Reader, name string) (*Table, error) {
+	sum := sha256.New()
+	t, err := read(io.TeeReader(r, sum), name, 0, nil)
+	if err == nil {
+		t.Hash = hex.EncodeToString(sum.Sum(nil))
+	}
+	return t, err
+}
 
-// read takes the size of the file where it is known, to make room at once.
+// read takes the size of the text where it is known, to make room at once. It leaves the hash to the caller.
 func read(r io.Reader, name string, size int64, need func(name string) bool) (*Table, error) {
 	buffered := bufio.NewReaderSize(r, 1<<16)
 	head, err := buffered.Peek(4096)
@@ -84,8 +113,7 @@ func read(r io.Reader, name string, size int64, need func(name string) bool) (*T
 	if size > 0 && size <= maxBytes {
 		content.Grow(int(size) + 1)
 	}
-	hash := sha256.New()
-	n, err := io.Copy(io.MultiWriter(&content, hash), io.LimitReader(buffered, maxBytes+1))
+	n, err := io.Copy(&content, io.LimitReader(buffered, maxBytes+1))
 	if err != nil {
 		return nil, openError(name, err)
 	}
@@ -101,7 +129,6 @@ func read(r io.Reader, name string, size int64, need func(name string) bool) (*T
 	if err != nil {
 		return nil, err
 	}
-	t.Hash = hex.EncodeToString(hash.Sum(nil))
 	t.Notes = append(notes, t.Notes...)
 	return t, nil
 }

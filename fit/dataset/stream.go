@@ -1,20 +1,18 @@
 package dataset
 
 import (
-	"bytes"
-	"crypto/sha256"
-	"encoding/hex"
 	"errors"
-	"io"
 	"os"
 	"runtime"
 	"slices"
-	"strings"
-	"unicode/utf8"
 )
 
-// StreamBytes is the size from which Open does not hold a file in memory.
-const StreamBytes = 16 << 20
+// A table of StreamBytes or more is not held by Open: of a plain file these are its bytes, of a Parquet file 8 for each value asked for. A compressed
+// file is not held from PackedBytes on, since digits shrink about threefold and its table cannot be measured before it is unpacked.
+const (
+	StreamBytes = 16 << 20
+	PackedBytes = 4 << 20
+)
 
 // ErrKinds ends a pass over a streamed table in which a column turned out to hold something else than its first rows said. Survey settles it.
 var ErrKinds = errors.New("a column holds something else than its first rows")
@@ -24,111 +22,54 @@ var errWhole = errors.New("the file cannot be read in pieces")
 
 // stream is what a table needs to read its file again and again.
 type stream struct {
+	source   source
 	path     string
 	need     func(name string) bool
-	size     int // of a piece
-	header   int // bytes before the first row, the byte-order mark included
-	line     int // of the first row
 	surveyed bool
 }
 
-// Open reads the columns that need accepts. A file of StreamBytes or more is not held: the table then knows the kinds of its columns from the
-// first rows, Rows is 0 until a pass has counted them, and Each gives the rows piece by piece. Files that cannot be cut into pieces (UTF-16, lone
+// source reads a file from its first row on, as often as it is asked to, in memory that does not grow with the rows.
+type source interface {
+	// pieces gives the rows in order, in pieces that are text still to be parsed or whose columns are filled, until give says that no more are
+	// wanted. It returns the hash of the whole file after the last one.
+	pieces(t *Table, give func(*reading) bool) (hash string, err error)
+}
+
+// Open reads the columns that need accepts. A large file (see StreamBytes) is not held: the table then knows the kinds of its columns from the
+// first rows or the schema, a pass counts its rows, and Each gives them piece by piece. Files that cannot be cut into pieces (UTF-16, lone
 // carriage returns) are read whole. Errors are those of ReadFile.
 func Open(path string, need func(name string) bool) (*Table, error) {
-	info, err := os.Stat(path)
-	if err != nil || info.IsDir() || info.Size() < StreamBytes || isCompressed(path) || isParquet(path) {
+	if !isLarge(path, need) {
 		return ReadColumns(path, need)
 	}
 	return OpenInPieces(path, need, pieceBytes)
 }
 
+// isLarge reports whether a table is too large to be held; false too for what cannot be read, which ReadColumns refuses.
+func isLarge(path string, need func(name string) bool) bool {
+	info, err := os.Stat(path)
+	switch {
+	case err != nil || info.IsDir():
+		return false
+	case isParquet(path):
+		return parquetBytes(path, need) >= StreamBytes
+	case isCompressed(path):
+		return info.Size() >= PackedBytes
+	}
+	return info.Size() >= StreamBytes
+}
+
 // OpenInPieces is Open for a file of any size, in pieces of so many bytes.
 func OpenInPieces(path string, need func(name string) bool, size int) (*Table, error) {
-	t, err := firstPiece(path, need, size)
+	first := firstText
+	if isParquet(path) {
+		first = firstParquet
+	}
+	t, err := first(path, need, size)
 	if errors.Is(err, errWhole) {
 		return ReadColumns(path, need)
 	}
 	return t, err
-}
-
-// firstPiece reads the header and the kinds of the columns from the start of the file.
-func firstPiece(path string, need func(name string) bool, size int) (*Table, error) {
-	f, err := os.Open(path)
-	if err != nil {
-		return nil, openError(path, err)
-	}
-	defer f.Close()
-	head := make([]byte, size)
-	n, err := io.ReadFull(f, head)
-	if err != nil && !errors.Is(err, io.ErrUnexpectedEOF) {
-		return nil, openError(path, err)
-	}
-	head = head[:n]
-	if err := checkHead(path, head[:min(n, 4096)]); err != nil {
-		return nil, err
-	}
-	bom := 0
-	if bytes.HasPrefix(head, []byte(bomUTF8)) {
-		bom = len(bomUTF8)
-	}
-	head = head[bom:]
-	delimiter := findDelimiter(string(head))
-	end := lastRecord(head, delimiter)
-	if bytes.HasPrefix(head, []byte(bomLittle)) || bytes.HasPrefix(head, []byte(bomBig)) || end <= 0 {
-		return nil, errWhole
-	}
-	text := string(head[:end])
-	r := &reading{name: path, text: text, delimiter: delimiter, table: &Table{Name: path}}
-	s := newSplitter(text, delimiter)
-	if err := r.header(s); err != nil {
-		return nil, err
-	}
-	t, err := buildIn(path, text, need, size)
-	var layout *LayoutError
-	if errors.As(err, &layout) {
-		return nil, err
-	}
-	if err != nil {
-		return nil, errWhole // whatever is wrong is found with all rows at hand
-	}
-	if len(t.Columns) < 2 {
-		return nil, errWhole
-	}
-	for _, c := range t.Columns {
-		c.Hi, c.Lo, c.Codes = nil, nil, nil
-		if c.Kind == Empty {
-			c.Kind = Number // a later piece may bring values
-		}
-	}
-	t.Rows, t.Lines, t.Notes, t.Hash = 0, nil, nil, ""
-	t.stream = &stream{path: path, need: need, size: size, header: bom + s.at, line: s.line}
-	return t, nil
-}
-
-// lastRecord returns where the last complete record of b ends; 0 where there is none.
-func lastRecord(b []byte, delimiter byte) int {
-	if bytes.IndexByte(b, '"') < 0 {
-		return bytes.LastIndexByte(b, '\n') + 1
-	}
-	// Quotes may hide line ends: walk the records.
-	end := 0
-	start, quoted, closed := true, false, false // at the start of a field; inside quotes; just behind a closing quote
-	for i, c := range b {
-		switch {
-		case quoted:
-			quoted, closed = c != '"', c == '"'
-			continue
-		case c == '"' && (start || closed): // a doubled quote opens again at once
-			quoted, closed, start = true, false, false
-			continue
-		case c == '\n':
-			end = i + 1
-		}
-		closed = false
-		start = c == delimiter || c == '\n' || (start && (c == ' ' || c == '\t'))
-	}
-	return end
 }
 
 // Streamed reports whether the table's rows are read from the file at each pass.
@@ -137,14 +78,13 @@ func (t *Table) Streamed() bool { return t.stream != nil }
 // Each gives the rows of the table in order, piece by piece: tables with the same columns, of which only needed ones hold values. What yield is
 // given must not be kept. A table that is not streamed is given as one piece. Pieces are read and parsed ahead on all cores.
 //
-// It returns what yield returns, ErrKinds, or the errors of ReadFile. After a whole pass Rows and Hash are known.
+// It returns what yield returns, ErrKinds, or the errors of ReadFile. After a whole pass Rows, Hash and Notes are known.
 func (t *Table) Each(yield func(piece *Table) error) error {
 	if t.stream == nil {
 		return yield(t)
 	}
-	rows := 0
 	counts := t.counters()
-	hash, err := t.pass(func(r *reading) error {
+	whole, err := t.pass(func(r *reading) error {
 		for j, b := range r.builders {
 			if c := t.Columns[j]; c.Kind == Number && b.texts+b.grouped > 0 {
 				return ErrKinds
@@ -155,14 +95,13 @@ func (t *Table) Each(yield func(piece *Table) error) error {
 		for j, b := range r.builders {
 			piece.Columns = append(piece.Columns, b.streamed(t.Columns[j], r.table.Rows))
 		}
-		rows += r.table.Rows
 		return yield(piece)
 	})
 	if err != nil {
 		return err
 	}
-	t.Rows, t.Hash = rows, hash
-	if t.DecimalComma, err = checkDecimals(t.Name, counts, t.Delimiter[0]); err != nil {
+	comma, err := checkDecimals(t.Name, counts, t.Delimiter[0])
+	if err != nil {
 		return err
 	}
 	for j, b := range counts {
@@ -175,14 +114,21 @@ func (t *Table) Each(yield func(piece *Table) error) error {
 			}
 		}
 	}
+	t.settle(whole, comma, counts)
 	return nil
+}
+
+// settle keeps what a pass tells about the table as a whole.
+func (t *Table) settle(p passed, comma bool, counts []*builder) {
+	t.Rows, t.Hash, t.DecimalComma = p.rows, p.hash, comma
+	t.Notes = notes(comma, counts, t.Delimiter[0], p.blanks)
 }
 
 // counters are builders that gather counts over pieces.
 func (t *Table) counters() []*builder {
 	out := make([]*builder, len(t.Columns))
 	for j, c := range t.Columns {
-		out[j] = &builder{column: &Column{Name: c.Name, Kind: c.Kind}, delimiter: t.Delimiter[0]}
+		out[j] = &builder{column: &Column{Name: c.Name, Kind: c.Kind, Decimals: c.Decimals}, delimiter: t.Delimiter[0]}
 	}
 	return out
 }
@@ -238,9 +184,7 @@ func (t *Table) Survey() error {
 func (t *Table) survey() (again bool, err error) {
 	builders := t.counters()
 	levels := make([]map[string]bool, len(builders))
-	rows := 0
-	hash, err := t.pass(func(r *reading) error {
-		rows += r.table.Rows
+	whole, err := t.pass(func(r *reading) error {
 		for j, b := range r.builders {
 			if t.Columns[j].Kind == Skipped {
 				continue
@@ -262,13 +206,12 @@ func (t *Table) survey() (again bool, err error) {
 	if err != nil {
 		return false, err
 	}
-	t.DecimalComma, t.Rows, t.Hash = comma, rows, hash
 	for j, b := range builders {
 		old := t.Columns[j]
 		if old.Kind == Skipped {
 			continue
 		}
-		b.rows = rows
+		b.rows = whole.rows
 		c := b.column
 		c.Kind = 0
 		b.finish()
@@ -281,130 +224,13 @@ func (t *Table) survey() (again bool, err error) {
 		}
 		t.Columns[j] = c
 	}
+	t.settle(whole, comma, builders)
 	return again, nil
 }
 
-// job is a piece on its way.
-type job struct {
-	r    *reading
-	err  error
-	done chan struct{}
-}
-
-// pass reads the file from its first row, parses pieces on all cores, gives them in order, and returns the hash of the whole file.
-func (t *Table) pass(yield func(*reading) error) (hash string, err error) {
-	f, err := os.Open(t.stream.path)
-	if err != nil {
-		return "", openError(t.stream.path, err)
-	}
-	defer f.Close()
-	sum := sha256.New()
-	if _, err := io.CopyN(sum, f, int64(t.stream.header)); err != nil {
-		return "", openError(t.stream.path, err)
-	}
-	workers := runtime.GOMAXPROCS(0)
-	queue := make(chan *job, workers) // in file order; bounds what is in memory
-	work := make(chan *job)
-	stop := make(chan struct{})
-	for range workers {
-		go func() {
-			for j := range work {
-				if strings.IndexByte(j.r.text, '"') < 0 {
-					j.err = j.r.plainRows(j.r.firstLine)
-				} else {
-					s := newSplitter(j.r.text, j.r.delimiter)
-					s.line = j.r.firstLine
-					j.err = j.r.rows(s)
-				}
-				if j.err == nil {
-					j.r.text = ""
-				}
-				close(j.done)
-			}
-		}()
-	}
-	var readErr error
-	go func() {
-		defer close(queue)
-		defer close(work)
-		readErr = t.cut(f, sum, func(r *reading) bool {
-			j := &job{r: r, done: make(chan struct{})}
-			select {
-			case queue <- j:
-			case <-stop:
-				return false
-			}
-			work <- j
-			return true
-		})
-	}()
-	rows := 0
-	for j := range queue {
-		<-j.done
-		if err == nil {
-			if err = j.err; err == nil {
-				rows += j.r.table.Rows
-				err = yield(j.r)
-			}
-			if err != nil {
-				close(stop)
-			}
-		}
-	}
-	switch {
-	case err != nil:
-		return "", err
-	case readErr != nil:
-		return "", readErr
-	case rows == 0:
-		return "", &FileError{Path: t.Name, Reason: HeaderOnly, Found: "column names and no rows", Advice: "add rows of values below the names"}
-	}
-	return hex.EncodeToString(sum.Sum(nil)), nil
-}
-
-// cut reads the file in pieces that end with a record.
-func (t *Table) cut(f io.Reader, sum io.Writer, give func(*reading) bool) error {
-	line := t.stream.line
-	var carry []byte
-	for {
-		buf := make([]byte, len(carry)+t.stream.size)
-		copy(buf, carry)
-		n, err := io.ReadFull(f, buf[len(carry):])
-		if err != nil && !errors.Is(err, io.EOF) && !errors.Is(err, io.ErrUnexpectedEOF) {
-			return openError(t.stream.path, err)
-		}
-		last := err != nil
-		sum.Write(buf[len(carry) : len(carry)+n])
-		buf = buf[:len(carry)+n]
-		end := len(buf)
-		if !last {
-			if end = lastRecord(buf, t.Delimiter[0]); end <= 0 {
-				carry = buf // a record longer than a piece
-				if len(carry) > 64*t.stream.size+(64<<20) {
-					return errWhole
-				}
-				continue
-			}
-		}
-		text := string(buf[:end])
-		carry = slices.Clone(buf[end:])
-		if !utf8.ValidString(text) || strings.IndexByte(text, 0) >= 0 || loneReturn(text) {
-			return errWhole
-		}
-		if text != "" && !give(t.piece(text, line)) {
-			return nil
-		}
-		line += strings.Count(text, "\n")
-		if last {
-			return nil
-		}
-	}
-}
-
-// piece prepares the reading of one piece; columns known to be text are read as text from the first cell.
-func (t *Table) piece(text string, line int) *reading {
-	rows := strings.Count(text, "\n") + 1
-	r := &reading{name: t.Name, text: text, delimiter: t.Delimiter[0], table: &Table{Lines: make([]int, 0, rows)}, firstLine: line}
+// piece prepares the reading of so many rows; columns known to be text are read as text from the first cell.
+func (t *Table) piece(rows int) *reading {
+	r := &reading{name: t.Name, delimiter: t.Delimiter[0], table: &Table{Lines: make([]int, 0, rows)}}
 	for _, c := range t.Columns {
 		b := &builder{column: &Column{Name: c.Name}, delimiter: t.Delimiter[0], capacity: rows}
 		switch c.Kind {
@@ -417,6 +243,74 @@ func (t *Table) piece(text string, line int) *reading {
 		r.builders = append(r.builders, b)
 	}
 	return r
+}
+
+// job is a piece on its way.
+type job struct {
+	r    *reading
+	err  error
+	done chan struct{}
+}
+
+// passed is what a whole pass has seen.
+type passed struct {
+	rows, blanks int
+	hash         string
+}
+
+// pass reads the file from its first row, parses pieces on all cores and gives them in order.
+func (t *Table) pass(yield func(*reading) error) (p passed, err error) {
+	workers := runtime.GOMAXPROCS(0)
+	queue := make(chan *job, workers) // in file order; bounds what is in memory
+	work := make(chan *job)
+	stop := make(chan struct{})
+	for range workers {
+		go func() {
+			for j := range work {
+				j.err = j.r.parse()
+				close(j.done)
+			}
+		}()
+	}
+	var sourceErr error
+	go func() {
+		defer close(queue)
+		defer close(work)
+		p.hash, sourceErr = t.stream.source.pieces(t, func(r *reading) bool {
+			j := &job{r: r, done: make(chan struct{})}
+			select {
+			case queue <- j:
+			case <-stop:
+				return false
+			}
+			work <- j
+			return true
+		})
+	}()
+	var blanks blankLines
+	for j := range queue {
+		<-j.done
+		if err == nil {
+			if err = j.err; err == nil {
+				p.rows += j.r.table.Rows
+				blanks.take(j.r)
+				err = yield(j.r)
+			}
+			if err != nil {
+				close(stop)
+			}
+		}
+	}
+	switch {
+	case err != nil:
+		return p, err
+	case sourceErr != nil:
+		return p, sourceErr
+	case p.rows == 0:
+		return p, &FileError{Path: t.Name, Reason: HeaderOnly, Found: "column names and no rows", Advice: "add rows of values below the names"}
+	}
+	p.blanks = blanks.between
+	return p, nil
 }
 
 // Whole reads a streamed table into memory after all.

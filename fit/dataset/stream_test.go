@@ -1,8 +1,10 @@
 package dataset
 
 import (
+	"crypto/sha256"
 	"errors"
 	"fmt"
+	"maps"
 	"math"
 	"math/rand/v2"
 	"os"
@@ -64,7 +66,8 @@ func shownCell(c *Column, i int) string {
 	return "nothing"
 }
 
-// TestStreamedIsWhole: a table read piece by piece gives the rows of the table read whole, with the same kinds, levels and hash.
+// TestStreamedIsWhole: a table read piece by piece, plain or compressed, gives the rows of the table read whole, with the same kinds, levels and
+// notes.
 func TestStreamedIsWhole(t *testing.T) {
 	rng := rand.New(rand.NewPCG(41, 42))
 	for round := range 40 {
@@ -88,39 +91,91 @@ func TestStreamedIsWhole(t *testing.T) {
 			if i > 75 {
 				gap = "1.5"
 			}
+			if round%7 == 0 && rng.IntN(9) == 0 {
+				b.WriteString(end)
+			}
 			fmt.Fprintf(&b, "%.4f,%s,%s,%s,%s%s", rng.NormFloat64(), []string{"", "0.1", "NA", "1e3"}[rng.IntN(4)], c, d, gap, end)
 		}
-		text := b.String()
-		path := file(t, text)
-		whole, err := ReadFile(path)
+		plain, err := ReadFile(file(t, b.String()))
 		if err != nil {
 			t.Fatal(err)
 		}
-		tb, err := OpenInPieces(path, nil, 400+rng.IntN(900))
+		for _, ending := range []string{"", ".gz", ".zst"} {
+			path := packed(t, ending, []byte(b.String()))
+			tb, err := OpenInPieces(path, nil, 400+rng.IntN(900))
+			if err != nil {
+				t.Fatal(err)
+			}
+			sameStreamed(t, fmt.Sprintf("round %d%s", round, ending), tb, plain)
+			if want := hashOf(t, path); tb.Hash != want {
+				t.Errorf("round %d%s: hash %s, want %s", round, ending, tb.Hash, want)
+			}
+		}
+	}
+}
+
+// hashOf is the hash of a file as it is on disk.
+func hashOf(t *testing.T, path string) string {
+	t.Helper()
+	raw, err := os.ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return fmt.Sprintf("%x", sha256.Sum256(raw))
+}
+
+// sameStreamed surveys a streamed table, passes over it, and compares everything but the hash with the table held.
+func sameStreamed(t *testing.T, name string, tb, whole *Table) {
+	t.Helper()
+	if !tb.Streamed() {
+		t.Fatalf("%s was read whole", name)
+	}
+	if err := tb.Survey(); err != nil {
+		t.Fatal(err)
+	}
+	got := gathered(t, tb)
+	if len(got) != whole.Rows || tb.Rows != whole.Rows || !slices.Equal(tb.Notes, whole.Notes) || tb.DecimalComma != whole.DecimalComma {
+		t.Fatalf("%s: %d rows, want %d; notes %q, want %q", name, len(got), whole.Rows, tb.Notes, whole.Notes)
+	}
+	for j, c := range whole.Columns {
+		s := tb.Columns[j]
+		if s.Name != c.Name || s.Kind != c.Kind || !slices.Equal(s.Levels, c.Levels) || s.Missing != c.Missing || !maps.Equal(s.MissingAs, c.MissingAs) ||
+			s.NumericCells != c.NumericCells || s.Decimals != c.Decimals || s.FirstStray != c.FirstStray || s.FirstStrayLine != c.FirstStrayLine {
+			t.Errorf("%s: column %+v, want %+v", name, s, c)
+		}
+		for i := range whole.Rows {
+			if got[i][j+1] != shownCell(c, i) || got[i][0] != fmt.Sprint(whole.Lines[i]) {
+				t.Fatalf("%s, row %d, column %s: %q in line %s, want %q in line %d", name, i, c.Name, got[i][j+1], got[i][0], shownCell(c, i), whole.Lines[i])
+			}
+		}
+	}
+}
+
+// TestStreamedNotes: decimal commas and blank lines are noted as for a table held; blank lines at the end are not.
+func TestStreamedNotes(t *testing.T) {
+	var b strings.Builder
+	b.WriteString("a;b\n")
+	for i := range 200 {
+		fmt.Fprintf(&b, "%d,5;%d\n", i, i)
+		if i%50 == 0 {
+			b.WriteString("\n")
+		}
+	}
+	b.WriteString("\n\n")
+	path := file(t, b.String())
+	whole, err := ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(whole.Notes) != 2 || !strings.HasPrefix(whole.Notes[1], "4 blank lines") {
+		t.Fatalf("notes %q", whole.Notes)
+	}
+	for _, size := range []int{40, 333} {
+		tb, err := OpenInPieces(path, nil, size)
 		if err != nil {
 			t.Fatal(err)
 		}
-		if !tb.Streamed() {
-			t.Fatalf("round %d was read whole", round)
-		}
-		if err := tb.Survey(); err != nil {
-			t.Fatal(err)
-		}
-		got := gathered(t, tb)
-		if len(got) != whole.Rows || tb.Rows != whole.Rows || tb.Hash != whole.Hash {
-			t.Fatalf("round %d: %d rows, want %d; hash %s, want %s", round, len(got), whole.Rows, tb.Hash, whole.Hash)
-		}
-		for j, c := range whole.Columns {
-			s := tb.Columns[j]
-			if s.Kind != c.Kind || !slices.Equal(s.Levels, c.Levels) || s.Missing != c.Missing || s.Decimals != c.Decimals || s.FirstStray != c.FirstStray || s.FirstStrayLine != c.FirstStrayLine {
-				t.Errorf("round %d: column %+v, want %+v", round, s, c)
-			}
-			for i := range whole.Rows {
-				if got[i][j+1] != shownCell(c, i) || got[i][0] != fmt.Sprint(whole.Lines[i]) {
-					t.Fatalf("round %d, row %d, column %s: %q in line %s, want %q in line %d", round, i, c.Name, got[i][j+1], got[i][0], shownCell(c, i), whole.Lines[i])
-				}
-			}
-		}
+		sameStreamed(t, fmt.Sprint(size), tb, whole)
 	}
 }
 
@@ -156,29 +211,40 @@ func TestStreamWithoutSurvey(t *testing.T) {
 func TestStreamErrors(t *testing.T) {
 	good := "a,b\n" + strings.Repeat("1,2\n", 500)
 	for name, text := range map[string]string{"ragged": good + "1,2,3\n" + good[4:], "latin": good + "1,\xe9\n", "nul": good + "1,\x00\n", "lone return": good + "1,2\r3,4\n"} {
-		tb, err := OpenInPieces(file(t, text), nil, 200)
+		for _, ending := range []string{"", ".gz", ".zst"} {
+			tb, err := OpenInPieces(packed(t, ending, []byte(text)), nil, 200)
+			if err != nil {
+				t.Fatal(err)
+			}
+			err = tb.Each(func(*Table) error { return nil })
+			if err == nil {
+				t.Errorf("%s: no error", name)
+			}
+			if name == "ragged" {
+				var l *LayoutError
+				if !errors.As(err, &l) || l.Line != 502 {
+					t.Errorf("ragged: %v", err)
+				}
+			} else if !CannotCut(err) {
+				t.Errorf("%s: %v, want a file that cannot be cut", name, err)
+			}
+		}
+	}
+	rows := make([]typedRow, 500)
+	for _, path := range []string{file(t, good), packed(t, ".gz", []byte(good)), packed(t, ".zst", []byte(good)), writeParquet(t, rows)} {
+		tb, err := OpenInPieces(path, nil, 200)
 		if err != nil {
 			t.Fatal(err)
 		}
-		err = tb.Each(func(*Table) error { return nil })
-		if err == nil {
-			t.Errorf("%s: no error", name)
-		}
-		if name == "ragged" {
-			var l *LayoutError
-			if !errors.As(err, &l) || l.Line != 502 {
-				t.Errorf("ragged: %v", err)
+		enough := errors.New("enough")
+		pieces := 0
+		if err := tb.Each(func(*Table) error {
+			if pieces++; pieces == 3 {
+				return enough
 			}
-		} else if !CannotCut(err) {
-			t.Errorf("%s: %v, want a file that cannot be cut", name, err)
+			return nil
+		}); err != enough || pieces != 3 {
+			t.Errorf("%s: an early end gives %v after %d pieces", path, err, pieces)
 		}
-	}
-	tb, err := OpenInPieces(file(t, good), nil, 200)
-	if err != nil {
-		t.Fatal(err)
-	}
-	enough := errors.New("enough")
-	if err := tb.Each(func(*Table) error { return enough }); err != enough {
-		t.Errorf("an early end gives %v", err)
 	}
 }
