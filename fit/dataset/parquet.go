@@ -423,6 +423,10 @@ func doubleValue(v float64, c *Column) doubledouble.Number {
 	if v == math.Trunc(v) && math.Abs(v) < 1<<53 {
 		return doubledouble.From(v)
 	}
+	if x, decimals, ok := fewDigits(v, c.Decimals); ok {
+		c.Decimals = max(c.Decimals, decimals)
+		return x
+	}
 	s := strconv.FormatFloat(v, 'e', -1, 64)
 	e := strings.IndexByte(s, 'e')
 	exponent, err := strconv.Atoi(s[e+1:])
@@ -439,6 +443,26 @@ func doubleValue(v float64, c *Column) doubledouble.Number {
 		return doubledouble.From(v)
 	}
 	return x
+}
+
+var tens = [...]float64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15}
+
+// fewDigits finds the decimal of at most 15 digits, and at most 15 of them behind the point, that stands for v: there is one at most. It does not
+// try where a value before had more.
+func fewDigits(v float64, before int) (x doubledouble.Number, decimals int, ok bool) {
+	if before >= len(tens) {
+		return x, 0, false
+	}
+	for k := 1; k < len(tens); k++ {
+		m := math.Round(v * tens[k])
+		if math.Abs(m) >= 1e15 {
+			break
+		}
+		if x, _ = doubledouble.Scaled(m, -k); x.Hi == v {
+			return x, k, true
+		}
+	}
+	return x, 0, false
 }
 
 func decimalValue(v parquet.Value, kind parquet.Kind, scale int) doubledouble.Number {

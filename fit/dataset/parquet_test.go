@@ -3,14 +3,18 @@ package dataset
 import (
 	"errors"
 	"fmt"
+	"math"
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"strconv"
 	"strings"
 	"testing"
 	"time"
 
 	"github.com/parquet-go/parquet-go"
+
+	"modelmend/fit/doubledouble"
 )
 
 // wageRow has the columns of the wage survey in the file's order.
@@ -182,6 +186,43 @@ func TestParquetReplaced(t *testing.T) {
 	}
 	if err := tb.Each(func(*Table) error { return nil }); err == nil || !strings.Contains(err.Error(), "other columns than before") {
 		t.Errorf("another file gives %v", err)
+	}
+}
+
+// TestFewDigits: the short way to the decimal of a float64 gives what the shortest decimal of the standard library gives.
+func TestFewDigits(t *testing.T) {
+	rng := rand.New(rand.NewPCG(3, 4))
+	values := []float64{0.1, 0.5, -0.05, 1e-15, 1.5e-10, 1e-16, 1e-300, 5e-324, 1.1e15, 123456789012345.6, 0.999999999999999, 0.9999999999999999, 0.30000000000000004,
+		999999999999999.9, 99999999999999.9, 1e22 + 0.1, 4503599627370495.5}
+	for range 200_000 {
+		digits := 1 + rng.IntN(17)
+		v, err := strconv.ParseFloat(fmt.Sprintf("%d.%0*d", rng.IntN(1000), digits, rng.Int64N(int64(math.Pow10(digits)))), 64)
+		if err != nil {
+			t.Fatal(err)
+		}
+		values = append(values, v, -v, v*math.Pow10(-rng.IntN(20)), rng.NormFloat64())
+	}
+	found := 0
+	for _, v := range values {
+		if v == math.Trunc(v) {
+			continue
+		}
+		got, decimals, ok := fewDigits(v, 0)
+		if !ok {
+			continue
+		}
+		found++
+		text := strconv.FormatFloat(v, 'f', -1, 64)
+		want, err := doubledouble.Parse(text)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if places := len(text) - strings.IndexByte(text, '.') - 1; got != want || decimals != places {
+			t.Fatalf("%s: %v with %d decimals, want %v with %d", text, got, decimals, want, places)
+		}
+	}
+	if found < len(values)/3 {
+		t.Errorf("only %d of %d values taken the short way", found, len(values))
 	}
 }
 
