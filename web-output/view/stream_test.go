@@ -2,13 +2,18 @@ package view_test
 
 import (
 	"bytes"
+	"compress/gzip"
 	"context"
 	"encoding/json"
 	"fmt"
+	"math"
 	"os"
 	"path/filepath"
 	"strings"
 	"testing"
+
+	"github.com/klauspost/compress/zstd"
+	"github.com/parquet-go/parquet-go"
 
 	"modelmend/compare"
 	"modelmend/fit/dataset"
@@ -53,9 +58,70 @@ func large(t *testing.T) string {
 	return path
 }
 
-// TestStreamedIsHeld: a table passed over piece by piece gives the same bytes as the table held in memory, for any number of workers.
+// packed writes the table again, as .gz and as .zst.
+func packed(t *testing.T, path string) (gz, zst string) {
+	t.Helper()
+	text, err := os.ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	gz, zst = path+".gz", path+".zst"
+	var b bytes.Buffer
+	w := gzip.NewWriter(&b)
+	w.Write(text)
+	w.Close()
+	if err := os.WriteFile(gz, b.Bytes(), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	z, err := zstd.NewWriter(nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := os.WriteFile(zst, z.EncodeAll(text, nil), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	return gz, zst
+}
+
+// asParquet writes the table as Parquet, in several row groups.
+func asParquet(t *testing.T, path string) string {
+	t.Helper()
+	type row struct {
+		Y     float64  `parquet:"y"`
+		A     float64  `parquet:"a"`
+		B     float64  `parquet:"b"`
+		C     *float64 `parquet:"c,optional"`
+		D     float32  `parquet:"d"`
+		Total int64    `parquet:"total,decimal(1:18)"`
+		Place string   `parquet:"place,dict"`
+		Note  string   `parquet:"note"`
+	}
+	table, err := dataset.ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	rows := make([]row, table.Rows)
+	for i := range rows {
+		at := func(name string) float64 { c, _ := table.Column(name); return c.Hi[i] }
+		place, _ := table.Column("place")
+		rows[i] = row{Y: at("y"), A: at("a"), B: at("b"), D: float32(at("d")), Total: int64(math.Round(10 * at("total"))), Place: place.Levels[place.Codes[i]], Note: "x"}
+		if c := at("c"); !math.IsNaN(c) {
+			rows[i].C = &c
+		}
+	}
+	path = strings.TrimSuffix(path, ".csv") + ".parquet"
+	if err := parquet.WriteFile(path, rows, parquet.MaxRowsPerRowGroup(5000), parquet.PageBufferSize(4000)); err != nil {
+		t.Fatal(err)
+	}
+	return path
+}
+
+// TestStreamedIsHeld: a table passed over piece by piece gives the same bytes as the table held in memory, for any number of workers, and a compressed
+// table the same as a plain one.
 func TestStreamedIsHeld(t *testing.T) {
 	path := large(t)
+	gz, zst := packed(t, path)
+	columns := asParquet(t, path)
 	for name, edit := range map[string]func(*compare.Study){
 		"numbers": func(s *compare.Study) { s.Equation = "y = a + b + c + d" },
 		"everything": func(s *compare.Study) {
@@ -91,27 +157,33 @@ func TestStreamedIsHeld(t *testing.T) {
 				if err != nil {
 					t.Fatal(err)
 				}
-				return b
+				return bytes.Replace(b, []byte(c.Table.Hash), []byte("HASH"), 1)
 			}
 			held, err := dataset.ReadFile(path)
-			want := run(held, err, 2)
-			for _, c := range []struct{ size, workers int }{{20000, 1}, {70001, 3}} {
-				table, err := dataset.OpenInPieces(path, nil, c.size)
+			csv := run(held, err, 2)
+			held, err = dataset.ReadFile(columns)
+			parquet := run(held, err, 2)
+			for _, c := range []struct {
+				path          string
+				size, workers int
+				want          []byte
+			}{{path, 20000, 1, csv}, {path, 70001, 3, csv}, {gz, 50000, 2, csv}, {zst, 50000, 2, csv}, {columns, 50000, 2, parquet}} {
+				table, err := dataset.OpenInPieces(c.path, nil, c.size)
 				if err == nil && !table.Streamed() {
 					t.Fatal("the table is held")
 				}
-				got := run(table, err, c.workers)
+				got, want := run(table, err, c.workers), c.want
 				if !bytes.Equal(got, want) {
 					g, w := strings.Split(string(got), "\n"), strings.Split(string(want), "\n")
 					shown := 0
 					for i := range min(len(g), len(w)) {
 						if g[i] != w[i] && shown < 6 {
-							t.Errorf("pieces of %d: line %d is %s, held %s", c.size, i, g[i], w[i])
+							t.Errorf("%s in pieces of %d: line %d is %s, held %s", filepath.Base(c.path), c.size, i, g[i], w[i])
 							shown++
 						}
 					}
 					if shown == 0 {
-						t.Errorf("pieces of %d: %d lines, held %d", c.size, len(g), len(w))
+						t.Errorf("%s in pieces of %d: %d lines, held %d", filepath.Base(c.path), c.size, len(g), len(w))
 					}
 				}
 			}
@@ -122,6 +194,8 @@ func TestStreamedIsHeld(t *testing.T) {
 // TestStreamedRefusals: what is wrong with a streamed table is said as for one that is held.
 func TestStreamedRefusals(t *testing.T) {
 	path := large(t)
+	gz, zst := packed(t, path)
+	columns := asParquet(t, path)
 	for _, eq := range []string{"y = a + nothing", "y = a*place", "y = a + note", "y = a + (d-d)", "(d-d) = a", `y = a + categories(place, "nowhere")`} {
 		said := func(table *dataset.Table, err error) string {
 			t.Helper()
@@ -134,11 +208,13 @@ func TestStreamedRefusals(t *testing.T) {
 			}
 			return err.Error()
 		}
-		held, err := dataset.ReadFile(path)
-		want := said(held, err)
-		table, err := dataset.OpenInPieces(path, nil, 30000)
-		if got := said(table, err); got != want {
-			t.Errorf("%s: streamed\n%s\nheld\n%s", eq, got, want)
+		for _, path := range []string{path, gz, zst, columns} {
+			held, err := dataset.ReadFile(path)
+			want := said(held, err)
+			table, err := dataset.OpenInPieces(path, nil, 30000)
+			if got := said(table, err); got != want {
+				t.Errorf("%s: streamed\n%s\nheld\n%s", eq, got, want)
+			}
 		}
 	}
 }
