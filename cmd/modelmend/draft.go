@@ -166,9 +166,13 @@ func exampleEquation(t *dataset.Table) string {
 	return names[0] + " = " + strings.Join(names[1:], " + ")
 }
 
+// varies takes it for granted where the values are not at hand.
 func varies(c *dataset.Column) bool {
 	if c.Kind == dataset.Text {
 		return len(c.Levels) > 1
+	}
+	if c.Kind == dataset.Number && c.Hi == nil {
+		return true
 	}
 	first := math.NaN()
 	for i, v := range c.Hi {

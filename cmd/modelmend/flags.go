@@ -84,6 +84,13 @@ func (f *studyFlags) load(cmd *cobra.Command, arg string) (*compare.Study, *data
 	}
 	table.Name = study.Data
 	if need == nil {
+		err := table.Survey() // counts the rows and levels of a table that is not held
+		if dataset.CannotCut(err) {
+			table, err = table.Whole()
+		}
+		if err != nil {
+			return nil, nil, err
+		}
 		return nil, nil, &usageError{noEquation(arg, table)}
 	}
 	return study, table, nil

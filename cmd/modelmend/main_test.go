@@ -11,6 +11,7 @@ import (
 	"testing"
 
 	"modelmend/compare"
+	"modelmend/fit/dataset"
 	"modelmend/remedy"
 	"modelmend/web-output/view"
 )
@@ -315,6 +316,21 @@ func TestDraftCanBeRun(t *testing.T) {
 	}
 	if status, _, errOut := call(t, "draft", data, "-o", study); status != statusWrong || !strings.Contains(errOut, "exists already") {
 		t.Errorf("an existing file was overwritten: %s", errOut)
+	}
+}
+
+// TestNoEquationForLarge: a table that is not held is described too.
+func TestNoEquationForLarge(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "large.csv")
+	text := "y,a,place\n" + strings.Repeat("1.25,2,east\n0.5,1,west\nNA,2,west\n", dataset.StreamBytes/30)
+	if err := os.WriteFile(path, []byte(text), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	status, _, errOut := call(t, "compare", path)
+	for _, want := range []string{"1677720 rows", "number, 559240 missing", "text, 2 levels", `"y = a + place"`} {
+		if status != statusWrong || !strings.Contains(errOut, want) {
+			t.Errorf("status %d, want %s in %s", status, want, errOut)
+		}
 	}
 }
 
