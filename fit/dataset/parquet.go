@@ -394,10 +394,14 @@ func parquetReader(field parquet.Field, c *Column) (number func(parquet.Value) d
 		}, nil
 	case parquet.Int64:
 		return func(v parquet.Value) doubledouble.Number {
-			if unsigned {
+			n := v.Int64()
+			switch {
+			case unsigned && n < 0: // beyond the signed ones
 				return whole(new(big.Int).SetUint64(v.Uint64()))
+			case -1<<53 <= n && n <= 1<<53:
+				return doubledouble.From(float64(n))
 			}
-			return whole(big.NewInt(v.Int64()))
+			return whole(big.NewInt(n))
 		}, nil
 	case parquet.Float:
 		c.Decimals = -1

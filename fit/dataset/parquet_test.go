@@ -132,6 +132,35 @@ func TestParquetTypes(t *testing.T) {
 	}
 }
 
+// TestParquetWholes: whole numbers on each side of what a float64 holds are those of the same digits in a CSV file.
+func TestParquetWholes(t *testing.T) {
+	type row struct {
+		Signed   int64  `parquet:"signed"`
+		Unsigned uint64 `parquet:"unsigned"`
+	}
+	var rows []row
+	text := "signed,unsigned\n"
+	for _, r := range []row{{1<<53 - 1, 1 << 53}, {1 << 53, 1<<53 + 1}, {1<<53 + 1, 1<<63 + 1}, {-1 << 53, 1<<64 - 1}, {-1<<53 - 1, 0}, {math.MinInt64, 1<<63 - 1}, {math.MaxInt64, 1 << 63}} {
+		rows = append(rows, r)
+		text += fmt.Sprintf("%d,%d\n", r.Signed, r.Unsigned)
+	}
+	want, err := Read(strings.NewReader(text), "t.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	got, err := ReadFile(writeParquet(t, rows))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for j, c := range want.Columns {
+		for i := range rows {
+			if g, w := shownCell(got.Columns[j], i), shownCell(c, i); g != w {
+				t.Errorf("%s, row %d: %s, want %s", c.Name, i, g, w)
+			}
+		}
+	}
+}
+
 // TestParquetStreamed: row groups, pages and pieces of any size give the rows, kinds, levels and counts of the table held.
 func TestParquetStreamed(t *testing.T) {
 	rng := rand.New(rand.NewPCG(8, 9))
