@@ -11,6 +11,7 @@ import (
 	"modelmend/fit/folds"
 	"modelmend/fit/linear"
 	"modelmend/fit/reduction"
+	"modelmend/fit/tail"
 	"modelmend/remedy"
 )
 
@@ -369,7 +370,7 @@ func spread(c *Coefficient, values, deleted []float64) *Resampled {
 		return r
 	}
 	r.Low, r.High = quantile(v, 0.025), quantile(v, 0.975)
-	r.BiasOffset = normalQuantile(below / n)
+	r.BiasOffset = tail.NormalQuantile(below / n)
 	r.Acceleration = acceleration(deleted)
 	r.AccLow, r.AccHigh = accelerated(v, r.BiasOffset, r.Acceleration)
 	return r
@@ -430,12 +431,12 @@ func accelerated(sorted []float64, z0, a float64) (low, high float64) {
 		return math.NaN(), math.NaN()
 	}
 	at := func(p float64) float64 {
-		z := z0 + normalQuantile(p)
+		z := z0 + tail.NormalQuantile(p)
 		d := 1 - a*z
 		if d <= 0 {
 			return math.NaN()
 		}
-		return quantile(sorted, normal(z0+z/d))
+		return quantile(sorted, tail.Normal(z0+z/d))
 	}
 	low, high = at(0.025), at(0.975)
 	if math.IsNaN(low + high) {
@@ -476,7 +477,3 @@ func (r Resampling) Sentence() string {
 	}
 	return fmt.Sprintf("%d resamples, each of %s; a row keeps its fold, and tuning is chosen again in each by %d-fold cross-validation.", r.Count, what, r.Folds)
 }
-
-func normal(z float64) float64 { return 0.5 * math.Erfc(-z/math.Sqrt2) }
-
-func normalQuantile(p float64) float64 { return -math.Sqrt2 * math.Erfcinv(2*p) }

@@ -11,6 +11,7 @@ import (
 	"modelmend/fit/dataset"
 	"modelmend/fit/folds"
 	"modelmend/fit/reduction"
+	"modelmend/fit/tail"
 	"modelmend/remedy"
 )
 
@@ -18,7 +19,7 @@ import (
 func TestAcceleratedInterval(t *testing.T) {
 	values := make([]float64, 999)
 	for b := range values {
-		values[b] = math.Exp(normalQuantile((float64(b) + 0.5) / 999))
+		values[b] = math.Exp(tail.NormalQuantile((float64(b) + 0.5) / 999))
 	}
 	deleted := make([]float64, 50)
 	for i := range deleted {
