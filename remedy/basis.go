@@ -8,7 +8,7 @@ import (
 
 	"modelmend/fit/figures"
 	"modelmend/fit/linear"
-	"modelmend/fit/tail"
+	"modelmend/fit/pretest"
 )
 
 // fitBasis fits the m combinations X*A (A p x m row-major) by least squares and states the result on the p regressors. A
@@ -77,18 +77,70 @@ func selection(p int, keep []int) []float64 {
 	return a
 }
 
-// restrictionTest is the F test of the linear restrictions that a fit with the given RSS and free slopes imposes on the
-// model left alone: ((RSS_R - RSS)/q) / s^2 on q and n-k degrees of freedom, which equals the Wald test.
-func restrictionTest(f *Final, what string) (Test, bool) {
+// restrictionTests are the tests of the linear restrictions that a fit with the given RSS and free slopes imposes on the model left alone: the F
+// test ((RSS_R - RSS)/q) / s^2 on q and n-k degrees of freedom, which equals the Wald test, and the mean-squared-error criteria.
+func restrictionTests(f *Final, what string) []Test {
 	q := float64(f.AsIs.Rank - f.Fitted.Columns)
 	if q <= 0 || math.IsNaN(f.S) || f.S == 0 {
-		return Test{}, false
+		return nil
 	}
-	stat := math.Max(0, f.RSS-f.AsIs.RSS) / q / (f.S * f.S)
-	t := Test{Name: "restriction", Statistic: stat, Degrees: []float64{q, f.DF}, P: tail.F(stat, q, f.DF)}
-	t.Text = fmt.Sprintf("%s: F(%g, %g) = %s, p-value %s. A large p-value does not show that the restriction is true.",
-		what, q, f.DF, say(stat), sayP(t.P))
-	return t, true
+	return criteria(math.Max(0, f.RSS-f.AsIs.RSS)/q/(f.S*f.S), q, f.DF, what)
+}
+
+// criteria holds the F statistic of q restrictions against three hypotheses: they are true; imposing them lowers the mean squared error of every
+// combination of coefficients; imposing them lowers that of the fitted values.
+func criteria(stat, q, df float64, what string) []Test {
+	c := pretest.MeanSquaredError(stat, q, df, 0.05)
+	degrees := []float64{q, df}
+	out := []Test{{Name: "restriction", Statistic: stat, Degrees: degrees, P: c.Exact.P, Critical: c.Exact.Critical,
+		Text: fmt.Sprintf("%s: F(%g, %g) = %s, p-value %s. A large p-value does not show that the restriction is true.", what, q, df, say(stat), sayP(c.Exact.P))}}
+	verdict := func(c pretest.Criterion) string {
+		if stat > c.Critical {
+			return "rejected"
+		}
+		return "not rejected, which is no proof"
+	}
+	what = "that imposing it lowers the mean squared error of every combination of coefficients (Toro-Vizcarrondo and Wallace 1968)"
+	if q == 1 {
+		what = "that imposing it lowers the mean squared error, of every combination of coefficients as of the fitted values (Toro-Vizcarrondo and Wallace 1968)"
+	}
+	out = append(out, Test{Name: "strong-mse", Statistic: stat, Degrees: degrees, P: c.Strong.P, Critical: c.Strong.Critical, Noncentrality: c.Strong.Noncentrality,
+		Text: fmt.Sprintf("hypothesis %s: F = %s against %s at 5 %%, p-value %s: %s.", what, say(stat), say(c.Strong.Critical), sayP(c.Strong.P), verdict(c.Strong))})
+	if q > 1 {
+		out = append(out, Test{Name: "weak-mse", Statistic: stat, Degrees: degrees, P: c.SecondWeak.P, Critical: c.SecondWeak.Critical, Noncentrality: c.SecondWeak.Noncentrality,
+			Text: fmt.Sprintf("hypothesis that imposing it lowers the mean squared error of the fitted values (Wallace 1972): F = %s against %s at 5 %%, p-value %s: %s.",
+				say(stat), say(c.SecondWeak.Critical), sayP(c.SecondWeak.P), verdict(c.SecondWeak))})
+	}
+	return out
+}
+
+// breakEvens says, for each coefficient of interest, how large the bias may be before the restrictions of a least-squares fit do harm: what they take off
+// its variance, at the residual variance of the model left alone.
+func breakEvens(f *Final) []BreakEven {
+	if f.AsIs.NotIdentified != nil || math.IsNaN(f.S) || f.S == 0 {
+		return nil
+	}
+	p := f.Problem
+	var out []BreakEven
+	for j, focal := range p.Focal {
+		if !focal {
+			continue
+		}
+		i := p.offset() + j
+		long := f.AsIs.Inverse[j*len(p.Names)+j]
+		bias := f.S * pretest.BreakEvenBias(long, f.Fitted.Factor[i*p.q()+i])
+		if math.IsNaN(bias) {
+			continue
+		}
+		b := BreakEven{Coefficient: p.Names[j], Bias: bias, Effect: math.NaN(), Estimated: f.Fitted.Slopes[j] - f.AsIs.Slopes[j]}
+		if bias < 1e-3*f.S*math.Sqrt(long) {
+			b.Text = fmt.Sprintf("%s gains nothing to speak of", b.Coefficient)
+		} else {
+			b.Text = fmt.Sprintf("%s has a smaller mean squared error than when left alone as long as the true bias is below %s; the estimate moves by %s", b.Coefficient, say(bias), say(b.Estimated))
+		}
+		out = append(out, b)
+	}
+	return out
 }
 
 // tune cross-validates count values on the inner splits: errors must return each value's sum of squared errors on the held-out rows of a split,

@@ -6,7 +6,6 @@ import (
 	"slices"
 
 	"modelmend/fit/linear"
-	"modelmend/fit/tail"
 )
 
 // components regresses on the leading principal components of the standardised regressors.
@@ -190,11 +189,12 @@ func (c componentFit) describe(f *Final) Description {
 	}
 	c.spectrum(f)
 	if len(c.spare) == 0 && f.AsIs.NotIdentified == nil && !math.IsNaN(f.S) && f.S > 0 {
-		if test, ok := c.droppedTest(f); ok {
-			d.Tests = append(d.Tests, test)
-		}
-	} else if test, ok := restrictionTest(f, "restriction that the dropped directions have no effect"); ok {
-		d.Tests = append(d.Tests, test)
+		d.Tests = append(d.Tests, c.droppedTests(f)...)
+	} else {
+		d.Tests = append(d.Tests, restrictionTests(f, "restriction that the dropped directions have no effect")...)
+	}
+	if t.Chosen < len(c.rotated) {
+		d.BreakEven = breakEvens(f)
 	}
 	for k, comp := range t.Components {
 		if !comp.Kept && comp.Share < 0.05 && math.Abs(comp.T) > 2 {
@@ -242,8 +242,8 @@ func (c componentFit) spectrum(f *Final) {
 	}
 }
 
-// droppedTest is the F test that the dropped components have no effect: the mean of their squared t-ratios.
-func (c componentFit) droppedTest(f *Final) (Test, bool) {
+// droppedTests are those that the dropped components have no effect: F is the mean of their squared t-ratios.
+func (c componentFit) droppedTests(f *Final) []Test {
 	sum, q := 0.0, 0.0
 	for _, comp := range f.Fitted.Tuning.Components {
 		if !comp.Kept {
@@ -252,11 +252,7 @@ func (c componentFit) droppedTest(f *Final) (Test, bool) {
 		}
 	}
 	if q == 0 {
-		return Test{}, false
+		return nil
 	}
-	stat := sum / q
-	t := Test{Name: "restriction", Statistic: stat, Degrees: []float64{q, f.DF}, P: tail.F(stat, q, f.DF)}
-	t.Text = fmt.Sprintf("restriction that the %g dropped components have no effect: F(%g, %g) = %s, p-value %s. A large p-value does not show that the restriction is true.",
-		q, q, f.DF, say(stat), sayP(t.P))
-	return t, true
+	return criteria(sum/q, q, f.DF, fmt.Sprintf("restriction that the %g dropped components have no effect", q))
 }

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 
+	"modelmend/fit/figures"
+	"modelmend/fit/pretest"
 	"modelmend/fit/tail"
 )
 
@@ -126,11 +128,19 @@ func (p *Problem) dropVariant(key, name string, removes []int) Variant {
 func describeDrop(f *Final, removes, keep []int) Description {
 	p := f.Problem
 	var d Description
-	if t, ok := restrictionTest(f, "restriction that "+join(p.names(removes))+has(removes)+" no effect"); ok {
-		d.Tests = append(d.Tests, t)
-	}
+	d.Tests = restrictionTests(f, "restriction that "+join(p.names(removes))+has(removes)+" no effect")
+	d.BreakEven = breakEvens(f)
 	if len(removes) == 1 && f.AsIs.NotIdentified == nil && !math.IsNaN(f.S) && f.S > 0 {
 		d.Tests = append(d.Tests, singleT(f, removes[0]))
+		v := f.AsIs.Inverse[removes[0]*len(p.Names)+removes[0]]
+		effect := pretest.BreakEven(f.S * math.Sqrt(v))
+		for i := range d.BreakEven {
+			b := &d.BreakEven[i]
+			b.Effect = effect
+			b.Text += fmt.Sprintf("; that is as long as the true coefficient of %s is below %s in size, one of its standard errors (it is estimated at %s)",
+				p.Names[removes[0]], say(effect), say(f.AsIs.Slopes[removes[0]]))
+		}
+		d.Worst = worstCoverages(f, removes[0])
 	}
 	// The omitted-variable identity: kept coefficients move by Gamma * b(dropped), Gamma from regressing each dropped
 	// regressor on the kept ones.
@@ -167,6 +177,29 @@ func describeDrop(f *Final, removes, keep []int) Description {
 	}
 	d.Costs = append(d.Costs, "the standard errors shown are valid only if the choice to drop "+join(p.names(removes))+" was made without looking at the results")
 	return d
+}
+
+// worstCoverages says how far the coverage of the usual interval can fall for each coefficient of interest when column j is dropped only because it is
+// not significant: recomputed at the correlation of the two estimates here, for normal errors of known variance.
+func worstCoverages(f *Final, j int) []WorstCoverage {
+	p := f.Problem
+	n := len(p.Names)
+	var out []WorstCoverage
+	for k, focal := range p.Focal {
+		if !focal || k == j {
+			continue
+		}
+		r := f.AsIs.Inverse[k*n+j] / math.Sqrt(f.AsIs.Inverse[k*n+k]*f.AsIs.Inverse[j*n+j])
+		if !(math.Abs(r) < 1) {
+			continue
+		}
+		w := WorstCoverage{Coefficient: p.Names[k], Correlation: r}
+		w.Coverage, w.TrueT = pretest.WorstCoverage(r, ruleMark, 0.95)
+		w.Text = fmt.Sprintf("if %s is dropped only because its |t| is below 1.96, the usual 95 %% interval of %s covers as little as %s in the worst case (the two estimates correlate by %s; "+
+			"worst where the true t-ratio of %s is %s)", p.Names[j], p.Names[k], figures.Percent(w.Coverage), say(r), p.Names[j], say(w.TrueT))
+		out = append(out, w)
+	}
+	return out
 }
 
 func sign(v float64) string {

@@ -138,9 +138,8 @@ func describeIndex(f *Final, g Group, m indexMaker) Description {
 		own.Weights[p.offset()+c] = f.Fitted.Weights[c] / square
 	}
 	d.Derived = append(d.Derived, own)
-	if t, ok := restrictionTest(f, "restriction that the coefficients stand in the proportion of the index weights"); ok {
-		d.Tests = append(d.Tests, t)
-	}
+	d.Tests = restrictionTests(f, "restriction that the coefficients stand in the proportion of the index weights")
+	d.BreakEven = breakEvens(f)
 	d.Costs = append(d.Costs, fmt.Sprintf("separate effects of %s are given up: %d coefficients become one", join(p.names(g.Columns)), len(g.Columns)))
 	if m.method != "sum" {
 		d.Costs = append(d.Costs, "the weights come from the data; the standard errors take them as given")

@@ -208,15 +208,40 @@ type Description struct {
 	Status  []Status
 	Derived []Derived
 	Weights []NamedValue
+	// Of coefficients of interest:
+	BreakEven []BreakEven
+	Worst     []WorstCoverage
+}
+
+// BreakEven is the bias of a coefficient, in its own unit, beyond which the restrictions of a remedy raise its mean squared error; Estimated is how far
+// the estimate moves.
+type BreakEven struct {
+	Coefficient     string
+	Bias, Estimated float64
+	// Effect is the same in terms of what one dropped regressor's coefficient may truly be; NaN where several restrictions are imposed.
+	Effect float64
+	Text   string
+}
+
+// WorstCoverage is the least coverage of a nominal 95 % interval when the remedy is applied only because a t-ratio is below 1.96.
+type WorstCoverage struct {
+	Coefficient string
+	Correlation float64 // of the two estimates when left alone
+	Coverage    float64
+	TrueT       float64 // the true t-ratio of what is dropped at which it is reached
+	Text        string
 }
 
 // Test is one test of what the variant imposes.
 type Test struct {
-	Name      string // restriction | single-t
+	Name      string // restriction | strong-mse | weak-mse | single-t
 	Statistic float64
 	Degrees   []float64
 	P         float64
-	Text      string
+	Critical  float64 // at 5 %; 0 where none is stated
+	// Noncentrality is the largest one that the hypothesis allows.
+	Noncentrality float64
+	Text          string
 }
 
 // Meaning says what one coefficient means; Coefficient is empty for all of them.

@@ -251,7 +251,18 @@ func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative
 		out.CovarianceReason = a.NoCovariance()
 	}
 	for _, t := range a.Description.Tests {
-		out.Tests = append(out.Tests, Test{t.Name, Num(t.Statistic), nums(t.Degrees), Num(t.P), t.Text})
+		critical := Num(t.Critical)
+		if t.Critical == 0 {
+			critical = None()
+		}
+		out.Tests = append(out.Tests, Test{t.Name, Num(t.Statistic), nums(t.Degrees), Num(t.P), critical, Num(t.Noncentrality), t.Text})
+	}
+	out.BreakEven, out.WorstCoverage = []BreakEven{}, []WorstCoverage{}
+	for _, b := range a.Description.BreakEven {
+		out.BreakEven = append(out.BreakEven, BreakEven{b.Coefficient, Num(b.Bias), Num(b.Estimated), Num(b.Effect), b.Text})
+	}
+	for _, w := range a.Description.Worst {
+		out.WorstCoverage = append(out.WorstCoverage, WorstCoverage{w.Coefficient, Num(w.Correlation), Num(w.Coverage), Num(w.TrueT), w.Text})
 	}
 	out.Costs = append(out.Costs, a.Description.Costs...)
 	for _, n := range a.Description.Notes {

@@ -227,28 +227,30 @@ type LedgerOther struct {
 
 // Alternative is one remedy fitted to the common problem.
 type Alternative struct {
-	Key               string        `json:"key"`    // remedy, remedy:what or remedy:what:how
-	Remedy            string        `json:"remedy"` // as-is | drop | index | components | ridge | center
-	Label             string        `json:"label"`  // short, for a rung
-	Summary           string        `json:"summary"`
-	Coefficients      []Coefficient `json:"coefficients"` // the constant first where there is one, then every regressor, the same order everywhere
-	Derived           []Coefficient `json:"derived"`      // "effect of x" at the means, and an index's own coefficient
-	Covariance        [][]Num       `json:"covariance"`   // in the order of Coefficients; empty beside a reason when not available
-	CovarianceReason  string        `json:"covarianceReason,omitempty"`
-	ResidualSD        Num           `json:"residualSD"` // the s behind the standard errors
-	FitRMSE           Num           `json:"fitRMSE"`    // root mean squared residual of this fit on all rows
-	R2                Num           `json:"r2"`
-	DegreesOfFreedom  Num           `json:"degreesOfFreedom"`
-	StandardErrorKind string        `json:"standardErrorKind"` // classical | robust | clustered | autocorrelation
-	OutOfSample       OutOfSample   `json:"outOfSample"`
-	Tuning            *Tuning       `json:"tuning"` // null where nothing is tuned
-	Tests             []Test        `json:"tests"`
-	Meaning           []Meaning     `json:"meaning"`
-	Costs             []string      `json:"costs"`
-	Notes             []Note        `json:"notes"`
-	Removes           []string      `json:"removes"` // columns that a drop removes
-	Weights           []NamedValue  `json:"weights"` // index weights on raw units
-	Simulation        []Simulation  `json:"simulation"`
+	Key               string          `json:"key"`    // remedy, remedy:what or remedy:what:how
+	Remedy            string          `json:"remedy"` // as-is | drop | index | components | ridge | center
+	Label             string          `json:"label"`  // short, for a rung
+	Summary           string          `json:"summary"`
+	Coefficients      []Coefficient   `json:"coefficients"` // the constant first where there is one, then every regressor, the same order everywhere
+	Derived           []Coefficient   `json:"derived"`      // "effect of x" at the means, and an index's own coefficient
+	Covariance        [][]Num         `json:"covariance"`   // in the order of Coefficients; empty beside a reason when not available
+	CovarianceReason  string          `json:"covarianceReason,omitempty"`
+	ResidualSD        Num             `json:"residualSD"` // the s behind the standard errors
+	FitRMSE           Num             `json:"fitRMSE"`    // root mean squared residual of this fit on all rows
+	R2                Num             `json:"r2"`
+	DegreesOfFreedom  Num             `json:"degreesOfFreedom"`
+	StandardErrorKind string          `json:"standardErrorKind"` // classical | robust | clustered | autocorrelation
+	OutOfSample       OutOfSample     `json:"outOfSample"`
+	Tuning            *Tuning         `json:"tuning"` // null where nothing is tuned
+	Tests             []Test          `json:"tests"`
+	Meaning           []Meaning       `json:"meaning"`
+	Costs             []string        `json:"costs"`
+	BreakEven         []BreakEven     `json:"breakEven"`     // of focal coefficients, under linear restrictions
+	WorstCoverage     []WorstCoverage `json:"worstCoverage"` // of focal coefficients, when a regressor is dropped for its t-ratio
+	Notes             []Note          `json:"notes"`
+	Removes           []string        `json:"removes"` // columns that a drop removes
+	Weights           []NamedValue    `json:"weights"` // index weights on raw units
+	Simulation        []Simulation    `json:"simulation"`
 }
 
 // Coefficient is one coefficient under one alternative.
@@ -420,11 +422,31 @@ type ComponentInfo struct {
 
 // Test is one test of what the alternative imposes.
 type Test struct {
-	Name      string `json:"name"` // restriction | single-t
-	Statistic Num    `json:"statistic"`
-	Degrees   []Num  `json:"degrees"`
-	PValue    Num    `json:"pValue"`
-	Text      string `json:"text"`
+	Name          string `json:"name"` // restriction | strong-mse | weak-mse | single-t
+	Statistic     Num    `json:"statistic"`
+	Degrees       []Num  `json:"degrees"`
+	PValue        Num    `json:"pValue"`
+	Critical      Num    `json:"critical"`      // at 5 %; null where none is stated
+	Noncentrality Num    `json:"noncentrality"` // the largest that the hypothesis allows
+	Text          string `json:"text"`
+}
+
+// BreakEven is how large the bias of a coefficient may be before what the alternative imposes raises its mean squared error.
+type BreakEven struct {
+	Coefficient string `json:"coefficient"`
+	Bias        Num    `json:"bias"`
+	Estimated   Num    `json:"estimated"` // how far the estimate moves
+	Effect      Num    `json:"effect"`    // the same in terms of the dropped regressor's true coefficient; null unless one is dropped
+	Text        string `json:"text"`
+}
+
+// WorstCoverage is the least coverage of a nominal 95 % interval when a regressor is dropped only because its |t| is below 1.96.
+type WorstCoverage struct {
+	Coefficient string `json:"coefficient"`
+	Correlation Num    `json:"correlation"` // of the two estimates when left alone
+	Coverage    Num    `json:"coverage"`
+	TrueT       Num    `json:"trueT"` // where it is reached
+	Text        string `json:"text"`
 }
 
 // Meaning says what a coefficient now means.
