@@ -18,7 +18,7 @@ func TestCostOfChoosing(t *testing.T) {
 	for i := range n {
 		a := 2 * math.Pi * float64(i) / n
 		u, v := math.Cos(a), math.Sin(a) // centred, orthogonal, of one length
-		cells = append(cells, []float64{u + math.Cos(3*a) + 0.7*math.Sin(5*a), u, r*u + math.Sqrt(1-r*r)*v})
+		cells = append(cells, []float64{u + math.Cos(3*a) + 0.7*math.Sin(5*a) + 0.4*v, u, r*u + math.Sqrt(1-r*r)*v})
 	}
 	s := newStudy("y = x1 + x2")
 	s.Focal, s.Cutoffs.VIF = []string{"x1"}, 4
