@@ -355,7 +355,7 @@ func (c *Comparison) state(a *Alternative) {
 	if cross == nil {
 		cross = factor
 	}
-	if a.exact {
+	if a.exact && factor != nil {
 		a.diff = difference(factor, cross, c.AsIs.Factor(sample))
 	}
 	status := a.Fitted.Status
@@ -390,7 +390,7 @@ func (c *Comparison) state(a *Alternative) {
 		a.Coefficients = append(a.Coefficients, coef)
 	}
 	switch kind := c.kind().Name; {
-	case a.step:
+	case a.step || factor == nil:
 	case kind != Classical && a.covariances[kind] != nil:
 		a.Covariance = covariance(a.Description.Report, a.covariances[kind], q, 1)
 	case kind == Classical && !math.IsNaN(a.S):
@@ -489,7 +489,6 @@ func (c *Comparison) coefficient(a *Alternative, name string, w []float64, st re
 		out.SEReason = "not identified: it takes part in an exact dependency"
 		return out
 	}
-	v := form(w, a.Fitted.Factor)
 	variance, reason := a.variance(c.kind().Name, w)
 	switch {
 	case st == remedy.Zero:
@@ -511,8 +510,8 @@ func (c *Comparison) coefficient(a *Alternative, name string, w []float64, st re
 		if a.Key == "as-is" {
 			out.Bias = 0
 		}
-		if !math.IsNaN(a.s0) {
-			out.MSE = meanSquaredError(a.s0, v, form(w, a.diff), out.Bias, st)
+		if !math.IsNaN(a.s0) && a.Fitted.Factor != nil {
+			out.MSE = meanSquaredError(a.s0, form(w, a.Fitted.Factor), form(w, a.diff), out.Bias, st)
 		}
 	}
 	return out
@@ -622,7 +621,7 @@ func (c *Comparison) Path(a *Alternative) []PathPoint {
 			f.Cross = t.Cross(i)
 		}
 		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF, step: true, middles: a.middles}
-		if kind := c.kind().Name; kind != Classical && a.middles.reason[kind] == "" {
+		if kind := c.kind().Name; kind != Classical && f.Factor != nil && a.middles.reason[kind] == "" {
 			step.covariances = map[string][]float64{kind: c.frame.between(a.middles.of[kind], f)}
 		}
 		c.state(step)

@@ -338,7 +338,7 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 		}
 		a.covariances = map[string][]float64{}
 		for name, m := range a.middles.of {
-			if a.middles.reason[name] == "" {
+			if a.middles.reason[name] == "" && a.Fitted.Factor != nil {
 				a.covariances[name] = c.frame.between(m, a.Fitted)
 			}
 		}
@@ -439,6 +439,9 @@ func (c *Comparison) eachRow(order []int, yield func(cols []reduction.Column, in
 
 // variance is that of the combination w of (constant, slopes) by the kind named; NaN beside a reason.
 func (a *Alternative) variance(kind string, w []float64) (v float64, reason string) {
+	if a.Fitted.Factor == nil {
+		return math.NaN(), a.Fitted.NoErrors
+	}
 	if kind == Classical {
 		if math.IsNaN(a.S) {
 			return math.NaN(), "no degrees of freedom are left for the residual variance"

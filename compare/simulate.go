@@ -302,7 +302,11 @@ func (c *Comparison) simulate(ctx context.Context, red *reduction.Reduction, cho
 	for _, w := range watch {
 		a := c.Alternatives[w.alternative]
 		for t, truth := range truths {
-			a.Simulated = append(a.Simulated, sumUp(truth.Name, w.name, w.truth[t], w.estimates[t], w.covered[t]))
+			s := sumUp(truth.Name, w.name, w.truth[t], w.estimates[t], w.covered[t])
+			if a.Fitted.Factor == nil { // no interval, no coverage
+				s.Coverage, s.CoverageError = math.NaN(), math.NaN()
+			}
+			a.Simulated = append(a.Simulated, s)
 		}
 	}
 	return nil
@@ -379,7 +383,7 @@ func (c *Comparison) learnSimulated(t remedy.Training, choices []choice, watch [
 			w := watch[next]
 			est := dot(w.weights, value)
 			w.estimates[truth][d] = est
-			w.covered[truth][d] = math.Abs(est-w.truth[truth]) <= half*math.Sqrt(math.Max(0, form(w.weights, fit.Factor)))
+			w.covered[truth][d] = fit.Factor != nil && math.Abs(est-w.truth[truth]) <= half*math.Sqrt(math.Max(0, form(w.weights, fit.Factor)))
 		}
 	}
 }

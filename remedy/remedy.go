@@ -144,6 +144,8 @@ type Fitted struct {
 	Columns int      // slopes that were free to move
 	Tuning  *Tuning  // nil where nothing is tuned
 	Weights []float64
+	// NoErrors says why there is no standard error given the tuning, where no formula exists; Factor is then nil and only resamples give a spread.
+	NoErrors string
 	// For Training.Covariance or Final:
 	Factor []float64 // covariance over sigma^2 of (constant, slopes), q x q row-major
 	// Only for Training.Final:
