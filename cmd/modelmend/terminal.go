@@ -147,6 +147,10 @@ func ladderLines(r *view.Results) []string {
 		}
 		out = append(out, strings.TrimRight(fmt.Sprintf("%s %12s %16s%s %20s  %s", pad(a.Label, labelWidth), cell(k.Estimate), cell(k.StandardError), spread(again), view.Four(a.OutOfSample.RMSE), status), " "))
 	}
+	if kinds := r.Run.StandardErrors; len(kinds) > 0 && kinds[0].Kind != "classical" {
+		text, _, _ := strings.Cut(kinds[0].Text, ":")
+		out[0] += "  (" + text + " errors)"
+	}
 	if alike > 0 {
 		out = append(out, fmt.Sprintf("(%d more leave it within 5 %% of what it is when left alone)", alike))
 	}
