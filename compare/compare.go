@@ -293,7 +293,17 @@ func (c *Comparison) groups(focal, keep []int) ([]remedy.Group, error) {
 				return nil, &StudyError{"groups", fmt.Sprintf("two groups are called %q", g.Name), "rename one"}
 			}
 		}
-		out = append(out, remedy.Group{Name: g.Name, Columns: cols, ByUser: true})
+		if g.Weights != nil {
+			if len(cols) != len(g.Weights) {
+				return nil, &StudyError{"groups", fmt.Sprintf("group %q gives %d weights to %d regressors", g.Name, len(g.Weights), len(cols)), "name each regressor by itself"}
+			}
+			for i, w := range g.Weights {
+				if w == 0 || math.IsNaN(w) || math.IsInf(w, 0) {
+					return nil, &StudyError{"groups", fmt.Sprintf("the weight %g of %s is not allowed", w, g.Members[i]), "write a number that is not zero, or leave the member out"}
+				}
+			}
+		}
+		out = append(out, remedy.Group{Name: g.Name, Columns: cols, ByUser: true, Weights: g.Weights})
 	}
 	for _, dep := range c.Diagnosis.Dependencies {
 		if dep.Kind != collinear.Substantive && dep.Kind != collinear.Exact {

@@ -62,6 +62,7 @@ type NamedNumber struct {
 type NamedGroup struct {
 	Name    string
 	Members []string
+	Weights []float64 // on raw units, by member; nil: none given
 }
 
 // RemedySetting fixes one option of a remedy, or switches the remedy off.

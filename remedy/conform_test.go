@@ -263,3 +263,54 @@ func TestSpareLeavesOut(t *testing.T) {
 		}
 	}
 }
+
+// TestInverseCovarianceWeights: three members, the first two with correlation 0.8, the third uncorrelated with both. By hand: the inverse of
+// [1 .8; .8 1] has row sums 1/(1+.8) = 5/9, so that the weights on z-scores are 5/9, 5/9, 1 over their sum 19/9: 5/19, 5/19, 9/19.
+func TestInverseCovarianceWeights(t *testing.T) {
+	const n = 24
+	cols := make([]reduction.Column, 3)
+	y := reduction.Column{}
+	for i := range n {
+		a := 2 * math.Pi * float64(i) / n
+		u, v, w := math.Cos(a), math.Cos(2*a), math.Cos(3*a) // centred, orthogonal, of one length
+		for j, x := range []float64{10 * u, -(0.8*u + 0.6*v), 3 * w} {
+			cols[j].Hi = append(cols[j].Hi, x)
+		}
+		y.Hi = append(y.Hi, u+v+w+math.Sin(a))
+	}
+	red, err := reduction.Reduce(cols, y, true, reduction.Split{}, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s := linear.NewSample(red, red.Total)
+	p := &remedy.Problem{Names: []string{"a", "b", "c"}, Constant: true, Monomials: make([][]remedy.Factor, 3), Category: make([]string, 3), Focal: make([]bool, 3), Keep: make([]bool, 3),
+		Tangled: make([]bool, 3), Groups: []remedy.Group{{Name: "g", Columns: []int{0, 1, 2}, ByUser: true, Weights: []float64{1, 2, -4}}}, Sample: s}
+	r, _ := remedy.Find("index")
+	variants, _ := r.Variants(p)
+	seen := 0
+	for _, v := range variants {
+		fit := v.Learn(remedy.Training{Sample: s, Final: true})
+		var want []float64
+		switch v.Key {
+		case "index:g:inverse-covariance":
+			want = []float64{5.0 / 19 / s.SD(0), -5.0 / 19 / s.SD(1), 9.0 / 19 / s.SD(2)} // b moves against a
+		case "index:g:weights":
+			want = []float64{1, 2, -4}
+		default:
+			continue
+		}
+		seen++
+		for j, w := range want {
+			got := fit.Weights[j]
+			if v.Key != "index:g:weights" && j == 2 {
+				got = math.Abs(got) // its correlation with a is zero, and so the sign rounding's
+			}
+			if math.Abs(got-w) > 1e-12*math.Abs(w) {
+				t.Errorf("%s: weight %d is %g, want %g", v.Key, j, got, w)
+			}
+		}
+	}
+	if seen != 2 {
+		t.Errorf("%d of 2 variants", seen)
+	}
+}

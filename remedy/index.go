@@ -12,8 +12,9 @@ var _ = register(Remedy{
 	Key:   "index",
 	Title: "Merge into an index",
 	Order: 20,
-	Does: "Replaces the regressors of a group by one index: the mean of their z-scores, their sum in raw units, or their first " +
-		"principal component. Weights are learned from the regressors of the training rows alone, never from the dependent variable.",
+	Does: "Replaces the regressors of a group by one index: the mean of their z-scores, their mean weighted by the inverse of their covariance matrix, " +
+		"their sum in raw units, their first principal component, or the sum with the user's own weights. Weights are learned from the regressors of " +
+		"the training rows alone, never from the dependent variable.",
 	Assumes: "The members measure one concept, so that their coefficients stand in the fixed proportion of the weights.",
 	Buys:    "One coefficient for the concept, estimated from what the members have in common.",
 	Costs:   "Separate effects of the members are given up; if they differ, the index coefficient is a mixture of them.",
@@ -21,6 +22,7 @@ var _ = register(Remedy{
 	Referee: "Why should the members have equal (or these) weights? Was the index planned? Do the data reject the restriction?",
 	Sources: []string{
 		"Kling, Liebman and Katz (2007), Econometrica 75(1), 83-119 (mean of z-scores)",
+		"Anderson (2008), Journal of the American Statistical Association 103(484), 1481-1495 (inverse covariance)",
 		"Filmer and Pritchett (2001), Demography 38(1), 115-132 (first component)",
 		"Jolliffe (2002), Principal Component Analysis, Springer",
 	},
@@ -35,6 +37,8 @@ type indexMaker struct {
 
 var indexMakers = []indexMaker{
 	{"mean", "mean of z-scores", "the mean of the members' z-scores, signs aligned to the first member", meanWeights},
+	{"inverse-covariance", "inverse covariance", "the mean of the members' z-scores, signs aligned to the first member, weighted by the inverse of their covariance matrix: a member that " +
+		"repeats the others counts less", inverseWeights},
 	{"sum", "sum", "the sum of the members in raw units", sumWeights},
 	{"component", "first component", "the first principal component of the standardised members, its sign such that the first member counts positively", componentWeights},
 }
@@ -57,7 +61,17 @@ func indexVariants(p *Problem) (out []Variant, not []NotApplicable) {
 				not = append(not, NotApplicable{key, "for two members it is the mean of z-scores, which is listed"})
 				continue
 			}
+			if m.method == "inverse-covariance" && len(g.Columns) == 2 {
+				if g.ByUser {
+					not = append(not, NotApplicable{key, "for two members it is the mean of z-scores, which is listed"})
+				}
+				continue
+			}
 			out = append(out, p.indexVariant(key, g, m))
+		}
+		if g.Weights != nil {
+			m := indexMaker{"weights", "the user's weights", "the sum of the members in raw units times the user's weights", func(*linear.Sample, []int) []float64 { return g.Weights }}
+			out = append(out, p.indexVariant("index:"+g.Name+":weights", g, m))
 		}
 	}
 	return out, not
@@ -141,15 +155,63 @@ func describeIndex(f *Final, g Group, m indexMaker) Description {
 	d.Tests = restrictionTests(f, "restriction that the coefficients stand in the proportion of the index weights")
 	d.BreakEven = breakEvens(f)
 	d.Costs = append(d.Costs, fmt.Sprintf("separate effects of %s are given up: %d coefficients become one", join(p.names(g.Columns)), len(g.Columns)))
-	if m.method != "sum" {
+	if m.method != "sum" && m.method != "weights" {
 		d.Costs = append(d.Costs, "the weights come from the data; the standard errors take them as given")
 	}
 	for _, c := range g.Columns[1:] {
-		if m.method == "mean" && f.Fitted.Weights[c] < 0 {
-			d.Notes = append(d.Notes, Note{"sign-aligned", fmt.Sprintf("%s enters with a minus sign, because it moves against %s", p.Names[c], p.Names[g.Columns[0]])})
+		if (m.method == "mean" || m.method == "inverse-covariance") && f.Fitted.Weights[c] < 0 {
+			d.Notes = append(d.Notes, Note{"sign-aligned", fmt.Sprintf("%s enters with a minus sign, because %s %s", p.Names[c], why(f, g, c), p.Names[g.Columns[0]])})
 		}
 	}
 	return d
+}
+
+// why a member has a negative weight: it moves against the first, or the others say more than it does.
+func why(f *Final, g Group, c int) string {
+	if f.Problem.Sample.Correlation(g.Columns[0], c) < 0 {
+		return "it moves against"
+	}
+	return "with the others given, it corrects what they repeat of"
+}
+
+// inverseWeights gives the members, as z-scores with aligned signs, the row sums of the inverse of their correlation matrix over the sum of all its
+// entries, 1'C^-1 / (1'C^-1 1), and takes them to raw units. A member without variation adds nothing; dependent members share (the inverse is that
+// on the directions in which they vary).
+//
+// Source: Anderson (2008), Journal of the American Statistical Association 103(484), 1481-1495.
+func inverseWeights(s *linear.Sample, cols []int) []float64 {
+	sign := make([]float64, len(cols))
+	for i, c := range cols {
+		if s.SD(c) > 0 {
+			sign[i] = 1
+			if i > 0 && s.Correlation(cols[0], c) < 0 {
+				sign[i] = -1
+			}
+		}
+	}
+	sp := s.Keep(cols).Spectrum(nil)
+	w := make([]float64, len(cols))
+	for k := range sp.Rank {
+		along := 0.0
+		for i := range cols {
+			along += sp.V[i*sp.Rank+k] * sign[i]
+		}
+		for i := range cols {
+			w[i] += sp.V[i*sp.Rank+k] * along / (sp.Sigma[k] * sp.Sigma[k])
+		}
+	}
+	total := 0.0
+	for i := range w {
+		total += w[i] * sign[i]
+	}
+	for i, c := range cols {
+		if sign[i] == 0 || total == 0 {
+			w[i] = 0
+			continue
+		}
+		w[i] /= total * s.SD(c)
+	}
+	return w
 }
 
 // meanWeights gives each member sign/(count * sd), the sign of its correlation with the first member.

@@ -84,6 +84,7 @@ type Group struct {
 	Name    string
 	Columns []int
 	ByUser  bool
+	Weights []float64 // the user's, on raw units; nil: none given
 }
 
 // Variant is one alternative.

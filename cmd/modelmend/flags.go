@@ -32,7 +32,7 @@ func (f *studyFlags) register(cmd *cobra.Command) {
 	fl.StringVar(&f.purpose, "purpose", "", "explain, predict or describe")
 	fl.StringArrayVar(&f.smallest, "smallest-effect", nil, "an effect smaller than this would not matter, such as area=0.002")
 	fl.StringSliceVar(&f.keep, "keep", nil, "regressors that are never dropped or merged")
-	fl.StringArrayVar(&f.groups, "group", nil, "regressors that measure one concept, such as size=area,rooms")
+	fl.StringArrayVar(&f.groups, "group", nil, "regressors that measure one concept, such as size=area,rooms, or with weights size=area:1,rooms:20")
 	fl.StringVar(&f.rows, "rows", "", `the sample, such as "year <= 1959"`)
 	fl.StringArrayVar(&f.sets, "set", nil, "fix an option of a remedy, such as ridge.penalty=0.04")
 	fl.StringSliceVar(&f.skip, "skip", nil, "remedies to leave out")
@@ -159,7 +159,23 @@ func (f *studyFlags) apply(cmd *cobra.Command, s *compare.Study) error {
 			if err != nil {
 				return err
 			}
-			s.Groups = append(s.Groups, compare.NamedGroup{Name: name, Members: splitNames(value)})
+			g := compare.NamedGroup{Name: name}
+			for _, member := range splitNames(value) {
+				at := strings.LastIndex(member, ":")
+				if at < 0 {
+					g.Members = append(g.Members, member)
+					continue
+				}
+				w, err := strconv.ParseFloat(strings.TrimSpace(member[at+1:]), 64)
+				if err != nil {
+					return wrongUse("--group %s: the weight %q of %s is not a number", v, member[at+1:], member[:at])
+				}
+				g.Members, g.Weights = append(g.Members, strings.TrimSpace(member[:at])), append(g.Weights, w)
+			}
+			if g.Weights != nil && len(g.Weights) != len(g.Members) {
+				return wrongUse("--group %s: give every member a weight, such as size=area:1,rooms:20, or none", v)
+			}
+			s.Groups = append(s.Groups, g)
 		}
 	}
 	for _, v := range f.cutoffs {

@@ -131,8 +131,18 @@ func (p *studyParser) key(key, value *yaml.Node) error {
 		})
 	case "groups":
 		err = p.mapping(value, "groups", func(k, v *yaml.Node) error {
-			members, err := p.names(v, "group "+k.Value)
-			s.Groups = append(s.Groups, compare.NamedGroup{Name: k.Value, Members: members})
+			g := compare.NamedGroup{Name: k.Value}
+			var err error
+			if v.Kind == yaml.MappingNode { // members with their weights
+				err = p.mapping(v, "group "+k.Value, func(member, weight *yaml.Node) error {
+					w, err := p.number(weight, "the weight of "+member.Value)
+					g.Members, g.Weights = append(g.Members, member.Value), append(g.Weights, w)
+					return err
+				})
+			} else {
+				g.Members, err = p.names(v, "group "+k.Value)
+			}
+			s.Groups = append(s.Groups, g)
 			return err
 		})
 	case "remedies":
@@ -435,7 +445,15 @@ func writeStudy(s *compare.Study) string {
 	if len(s.Groups) > 0 {
 		m := &yaml.Node{Kind: yaml.MappingNode}
 		for _, g := range s.Groups {
-			m.Content = append(m.Content, text(g.Name), list(g.Members))
+			if g.Weights == nil {
+				m.Content = append(m.Content, text(g.Name), list(g.Members))
+				continue
+			}
+			weights := &yaml.Node{Kind: yaml.MappingNode, Style: yaml.FlowStyle}
+			for i, member := range g.Members {
+				weights.Content = append(weights.Content, text(member), number(g.Weights[i]))
+			}
+			m.Content = append(m.Content, text(g.Name), weights)
 		}
 		add("groups", m)
 	}

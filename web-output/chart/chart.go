@@ -156,7 +156,8 @@ func paths(r *view.Results, a view.Alternative) *charts.Line {
 	return c
 }
 
-// errorCurve draws the cross-validated mean squared error against the tuning.
+// errorCurve draws the cross-validated mean squared error against the tuning and, where the procedure was resampled, how often each value
+// was chosen: columns in a second grid beneath, over the same axis.
 func errorCurve(a view.Alternative) *charts.Line {
 	axis, first := axisFor(a.Tuning)
 	c := charts.NewLine()
@@ -167,6 +168,19 @@ func errorCurve(a view.Alternative) *charts.Line {
 		data = append(data, opts.LineData{Value: []any{p.Value, p.Error}})
 	}
 	c.AddSeries("c0", data, charts.WithSeriesId("error"), charts.WithLineChartOpts(opts.LineChart{ShowSymbol: opts.Bool(a.Tuning.Parameter != "penalty")}))
+	if r := a.Tuning.Resampled; r != nil && len(r.Shares) == len(a.Tuning.Path) {
+		axis.GridIndex = 1
+		c.SetGlobalOptions(charts.WithGridOpts(opts.Grid{}, opts.Grid{}))
+		c.ExtendXAxis(axis)
+		c.ExtendYAxis(opts.YAxis{Type: "value", Name: "share of the resamples", GridIndex: 1})
+		bars := charts.NewCustom() // drawn by the page's script: a series of bars would widen its axis, and leave the curve's
+		var shares []opts.CustomData
+		for i, p := range a.Tuning.Path[first:] {
+			shares = append(shares, opts.CustomData{Value: []any{p.Value, short(r.Shares[first+i])}})
+		}
+		bars.AddSeries("c1", shares, charts.WithSeriesId("chosen"), charts.WithCustomChartOpts(opts.CustomChart{XAxisIndex: 1, YAxisIndex: 1}))
+		c.Overlap(bars)
+	}
 	return c
 }
 

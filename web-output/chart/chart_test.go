@@ -76,3 +76,36 @@ func TestOptions(t *testing.T) {
 		t.Error("options differ from run to run")
 	}
 }
+
+// TestColumns: what was chosen in the resamples stands in a second grid of the error curve, over the same axis.
+func TestColumns(t *testing.T) {
+	r := results("x")
+	r.Alternatives[1].Tuning.Resampled = &view.TuningResampled{Shares: []view.Num{0.25, 0.123456789, 0.626543211}}
+	o, err := chart.Build(r)
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := json.Marshal(o)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var all map[string]struct {
+		Grid   []any
+		XAxis  []struct{ GridIndex int }
+		Series []struct {
+			ID                     string
+			XAxisIndex, YAxisIndex int
+			Data                   []struct{ Value []float64 }
+		}
+	}
+	if err := json.Unmarshal(b, &all); err != nil {
+		t.Fatal(err)
+	}
+	e := all["ridge-error"]
+	if len(e.Grid) != 2 || len(e.XAxis) != 2 || e.XAxis[1].GridIndex != 1 || len(e.Series) != 2 {
+		t.Fatalf("%+v: want two grids, two axes and two series", e)
+	}
+	if c := e.Series[1]; c.ID != "chosen" || c.XAxisIndex != 1 || c.YAxisIndex != 1 || len(c.Data) != 2 || c.Data[0].Value[0] != 0.1 || c.Data[0].Value[1] != 0.123457 {
+		t.Errorf("columns %+v: want the penalty 0.1 first, since zero has no place, with its share to six digits", c)
+	}
+}

@@ -99,6 +99,7 @@ func slim(r *view.Results) *view.Results {
 	for i := range out.Alternatives {
 		a := &out.Alternatives[i]
 		a.Covariance = [][]view.Num{}
+		a.Coefficients, a.Derived = lighter(a.Coefficients), lighter(a.Derived)
 		if a.Tuning == nil {
 			continue
 		}
@@ -108,9 +109,30 @@ func slim(r *view.Results) *view.Results {
 			t.Path[k].Coefficients = fewer(t.Path[k].Coefficients)
 			t.Path[k].Derived = fewer(t.Path[k].Derived)
 		}
+		if t.Resampled != nil { // the shares stand in the chart's options already
+			t.Resampled = &view.TuningResampled{Low: six(t.Resampled.Low), Median: six(t.Resampled.Median), High: six(t.Resampled.High), Shares: []view.Num{}}
+		}
 		a.Tuning = &t
 	}
 	return &out
+}
+
+// lighter rounds what was resampled.
+func lighter(list []view.Coefficient) []view.Coefficient {
+	out := append([]view.Coefficient{}, list...)
+	for i := range out {
+		out[i].Resampled = sixOf(out[i].Resampled)
+	}
+	return out
+}
+
+func sixOf(k *view.Resampled) *view.Resampled {
+	if k == nil {
+		return nil
+	}
+	return &view.Resampled{StandardError: six(k.StandardError), Low: six(k.Low), High: six(k.High),
+		BiasCorrected: view.Limits{Low: six(k.BiasCorrected.Low), High: six(k.BiasCorrected.High)},
+		SharePositive: six(k.SharePositive), ShareNegative: six(k.ShareNegative), Used: k.Used}
 }
 
 func fewer(list []view.PathCoefficient) []view.PathCoefficient {

@@ -201,6 +201,30 @@ func TestSmallPartsAreNotDrawn(t *testing.T) {
 	}
 }
 
+// TestResampledOrNot: with resamples the page has thin lines, their legend, sentences and what was chosen; without it says so once and has
+// none of them.
+func TestResampledOrNot(t *testing.T) {
+	marks := []string{`class="again"`, `class="legend"`, "Repeated 99 times on resampled rows", "<small>resampled ", "In 99 resamples the chosen penalty", "chosen in resamples", `"id":"chosen"`, "never mixed", "99 resamples, each of 40 rows"}
+	with := render(t, numbers(40, 3), terms(3), func(s *compare.Study) { s.Resamples = 99 })
+	without := render(t, numbers(40, 3), terms(3), nil)
+	sane(t, with)
+	body := func(html string) string { return html[strings.Index(html, "<main>"):] }
+	for _, m := range marks {
+		if !strings.Contains(body(with), m) {
+			t.Errorf("with resamples the page lacks %q", m)
+		}
+		if strings.Contains(strings.Split(body(without), "<script>")[0], m) {
+			t.Errorf("without resamples the page holds %q", m)
+		}
+	}
+	if n := strings.Count(without, "The procedure was not resampled."); n < 2 {
+		t.Errorf("without resamples the page says so %d times, want at the ladder and in the record", n)
+	}
+	if more := len(with) - len(without); more > 60_000 {
+		t.Errorf("what was resampled adds %d bytes", more)
+	}
+}
+
 // TestFigures holds the Go twin to a table made by hand; format.test.js holds the other to the same.
 func TestFigures(t *testing.T) {
 	raw, err := os.ReadFile("testdata/figures.json")

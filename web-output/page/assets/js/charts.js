@@ -1,6 +1,6 @@
 // Charts: options come from Go; this module attaches names, theme and the marks that follow the sliders. Reads the page's charts and
 // view.Results. Every label is text: formatters return plain strings for axes and elements for tool tips.
-import { figure, minus } from "./format.js";
+import { figure, minus, portion } from "./format.js";
 
 // paperTheme is what is printed, whatever the screen shows.
 const paperTheme = { ink: "#111111", soft: "#444444", line: "#cccccc", paper: "#ffffff", accent: "#134c57", band: "rgba(19, 76, 87, 0.14)", faint: "#777777" };
@@ -44,7 +44,10 @@ export function mountCharts(page) {
       const c = theme();
       const id = box.dataset.chart.endsWith("-path") ? "slope-0" : "error";
       const penalty = page.results.alternatives[a].tuning.parameter === "penalty";
-      chart.setOption({ series: [{ id, markLine: cursorLine(c, value > 0 || !penalty ? [{ xAxis: value }] : []) }] });
+      const line = { markLine: cursorLine(c, value > 0 || !penalty ? [{ xAxis: value }] : []) };
+      const series = [{ id, ...line }];
+      if (id === "error" && page.results.alternatives[a].tuning.resampled) series.push({ id: "chosen", ...line });
+      chart.setOption({ series });
     }
   }
 
@@ -207,7 +210,41 @@ function error(page, box, option, c) {
   s.markArea = { silent: true, itemStyle: { color: c.band }, data: [[{ xAxis: from > 0 || t.parameter !== "penalty" ? from : t.path[1].value }, { xAxis: to }]] };
   const ticks = t.candidates.map((k) => k.value).filter((v) => v > 0 || t.parameter !== "penalty");
   option.series.push({ type: "scatter", id: "candidates", symbol: "triangle", symbolSize: 8, itemStyle: { color: c.soft }, silent: true, data: ticks.map((v) => [v, nearest(t, v)]) });
-  option.tooltip = tooltip(c, (p) => tip([figure(p.value[0], 3), "mean squared error " + figure(p.value[1], 4)]));
+  const bars = option.series.find((k) => k.id === "chosen");
+  if (bars) chosen(option, bars, t, c);
+  option.tooltip = tooltip(c, (p) => tip([figure(p.value[0], 3), p.seriesId === "chosen" ? `chosen in ${portion(p.value[1])} of the resamples` : "mean squared error " + figure(p.value[1], 4)]));
+}
+
+// chosen lays the columns out beneath the curve: both grids have the same sides and both axes the same ends, so that values stand under
+// one another.
+function chosen(option, bars, t, c) {
+  const whole = t.parameter !== "penalty";
+  const path = t.path.filter((p) => p.value > 0 || whole);
+  const first = path[0].value, last = path[path.length - 1].value;
+  const letters = Math.max(6, ...path.map((p) => figure(p.error, 3).length + 1));
+  const sides = { left: 14 + Math.ceil(6.4 * letters), right: 18, outerBoundsMode: "none" };
+  option.grid = [{ ...sides, top: 48, bottom: "42%" }, { ...sides, top: "69%", bottom: 46 }];
+  const low = whole ? first - 0.5 : Math.pow(10, Math.floor(Math.log10(first)));
+  const high = whole ? last + 0.5 : Math.pow(10, Math.ceil(Math.log10(last)));
+  for (const axis of option.xAxis) {
+    Object.assign(axis, { min: low, max: high });
+    if (whole) Object.assign(axis.axisLabel, { showMinLabel: false, showMaxLabel: false });
+  }
+  option.xAxis[0].axisLabel.show = false;
+  option.xAxis[0].name = "";
+  option.xAxis[0].axisLine.onZero = false;
+  for (const y of option.yAxis) y.axisLine = { show: false };
+  const y = option.yAxis[1];
+  Object.assign(y, { min: 0, splitNumber: 2 });
+  y.axisLabel.formatter = (v) => minus(String(Math.round(1000 * v) / 10)) + " %";
+  bars.itemStyle = { color: c.faint };
+  bars.renderItem = (_, api) => {
+    const [x, top] = api.coord([api.value(0), api.value(1)]);
+    const step = (api.coord([last, 0])[0] - api.coord([first, 0])[0]) / Math.max(1, path.length - 1);
+    const wide = Math.max(1, Math.min(24, 0.72 * step));
+    const foot = api.coord([api.value(0), 0])[1];
+    return { type: "rect", shape: { x: x - wide / 2, y: top, width: wide, height: foot - top }, style: { fill: c.faint }, emphasis: { style: { fill: c.ink } } };
+  };
 }
 
 // nearest gives the error at the path's value nearest to v.

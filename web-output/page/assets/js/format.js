@@ -26,3 +26,15 @@ export function scaled(v, by) {
 export function root(v) {
   return v === null || v === undefined || v < 0 ? null : Math.sqrt(v);
 }
+
+// portion says a share in per cent: whole numbers, one decimal near the ends, never 0 or 100 for what is not. The twin of portion in content.go.
+export function portion(share) {
+  if (share === null || share === undefined) return "–";
+  const p = 100 * share;
+  if (p <= 0) return "none";
+  if (p >= 100) return "all";
+  if (p < 0.1) return "under 0.1\u00a0%";
+  if (p > 99.9) return "over 99.9\u00a0%";
+  if (p < 5 || p > 95) return (Math.floor(10 * p + 0.5) / 10).toFixed(1) + "\u00a0%";
+  return Math.floor(p + 0.5).toFixed(0) + "\u00a0%";
+}

@@ -1,6 +1,6 @@
 // The ladder: one rung an alternative for the chosen coefficient. Reads view.Results.alternatives and the page's choices.
-import { figure, scaled, root } from "./format.js";
-import { newAxis, drawTicks, drawInterval } from "./interval.js";
+import { figure, portion, scaled, root } from "./format.js";
+import { newAxis, drawTicks, drawInterval, stretch } from "./interval.js";
 import { position } from "./state.js";
 
 // coefficientOf finds the chosen coefficient in an alternative: {place, value} or null. Names are compared, never used as keys.
@@ -20,7 +20,56 @@ export function inUnits(c, by) {
   return {
     estimate: scaled(c.estimate, by), se: scaled(c.standardError, by), low: scaled(c.low, by), high: scaled(c.high, by),
     bias: scaled(c.estimatedBias, by), root: scaled(root(c.estimatedMSE), by), status: c.status,
+    posterior: scaled(c.posteriorSD, by), again: againIn(c.resampled, by),
   };
+}
+
+// againIn states what was resampled in the chosen unit; null where nothing was, or where there is no unit.
+function againIn(k, by) {
+  if (!k || by === null) return null;
+  return {
+    se: scaled(k.standardError, by), low: scaled(k.low, by), high: scaled(k.high, by), correctedLow: scaled(k.biasCorrected.low, by), correctedHigh: scaled(k.biasCorrected.high, by),
+    positive: k.sharePositive, negative: k.shareNegative, used: k.used,
+  };
+}
+
+// told says what repeating the whole procedure gave for one coefficient. The twin of told in content.go.
+export function told(k, estimate, run) {
+  if (!k || estimate === null || run.count === 0) return "";
+  let s = `Repeated ${run.count} times on resampled ${run.drawn}: `;
+  if (k.used === 0) return s + "the coefficient never had a value of its own.";
+  if (k.low === null || k.high === null) s += "too few values for limits";
+  else {
+    s += `the middle 95\u00a0% of the estimates lie between ${figure(k.low, 3)} and ${figure(k.high, 3)}`;
+    if (k.correctedLow === null || k.correctedHigh === null) s += " (bias-corrected and accelerated limits cannot be formed)";
+    else s += ` (bias-corrected and accelerated: ${figure(k.correctedLow, 3)} to ${figure(k.correctedHigh, 3)})`;
+  }
+  if (k.positive !== null && k.negative !== null) {
+    const [sign, share] = k.negative > k.positive ? ["negative", k.negative] : ["positive", k.positive];
+    s += `; ${portion(share)} are ${sign}`;
+    const zero = 1 - k.positive - k.negative;
+    if (zero > 5e-6) s += `, ${portion(zero)} zero`;
+    if ((estimate > 0 && sign === "negative") || (estimate < 0 && sign === "positive" && share > 0)) s += `, though the estimate itself is ${estimate > 0 ? "positive" : "negative"}`;
+  }
+  s += ".";
+  const left = run.count - k.used;
+  if (left > 0) s += ` In ${left} of the ${run.count} it had no value of its own.`;
+  return s;
+}
+
+// posterior is the twin of posterior in content.go.
+export function posterior(d) {
+  return d === null || d === undefined ? "" : `Where this alternative is read as a prior, the posterior standard deviation is ${figure(d, 3)}.`;
+}
+
+// beyond says how far a cut line goes, or nothing.
+export function beyond(axis, again) {
+  const cut = stretch(axis, again);
+  if (!cut) return "";
+  const ends = [];
+  if (cut.cutLow) ends.push(`to ${figure(again.low, 3)}`);
+  if (cut.cutHigh) ends.push(`to ${figure(again.high, 3)}`);
+  return ends.length ? "the thin line goes on " + ends.join(" and ") : "";
 }
 
 // atPoint states one step of a path as a rung: the interval keeps the alternative's own factor between standard error and half width.
@@ -35,7 +84,7 @@ export function atPoint(alternative, choice, i, by) {
   const half = c.standardError === null || t === null ? null : t * c.standardError;
   return inUnits({
     estimate: c.estimate, standardError: c.standardError, low: half === null ? null : c.estimate - half, high: half === null ? null : c.estimate + half,
-    estimatedBias: c.estimatedBias, estimatedMSE: c.estimatedMSE, status: "your choice",
+    estimatedBias: c.estimatedBias, estimatedMSE: c.estimatedMSE, posteriorSD: null, resampled: null, status: "your choice",
   }, by);
 }
 
@@ -75,7 +124,8 @@ export function mountLadder(page) {
     const by = unitOf(choice, page.state.unit);
     const rows = bodies.map((body) => rowOf(page, body, choice, by));
     const band = rows[0];
-    const axis = newAxis(rows.flatMap((r, i) => (r && !bodies[i].hidden ? [r.estimate, r.low, r.high] : [])));
+    const seen = rows.filter((r, i) => r && !bodies[i].hidden);
+    const axis = newAxis(seen.flatMap((r) => [r.estimate, r.low, r.high]), seen.flatMap((r) => (r.again ? [r.again.low, r.again.high] : [])));
     drawTicks(ticks, axis);
     for (const n of document.querySelectorAll("[data-shown]")) n.textContent = choice.name;
     bodies.forEach((body, i) => fill(page, body, rows[i], band, axis, choice));
@@ -103,7 +153,7 @@ function rowOf(page, body, choice, by) {
   }
   body.hidden = state.hidden.includes(a);
   const found = coefficientOf(alternative, choice);
-  const row = found ? inUnits(found.value, by) : { estimate: null, se: null, low: null, high: null, bias: null, root: null, status: "absent" };
+  const row = found ? inUnits(found.value, by) : { estimate: null, se: null, low: null, high: null, bias: null, root: null, posterior: null, again: null, status: "absent" };
   row.out = alternative.outOfSample.rmse;
   row.diff = alternative.outOfSample.difference.estimate;
   if (row.status === "different quantity") row.bias = row.root = null;
@@ -118,11 +168,12 @@ function fill(page, body, row, band, axis, choice) {
   let said = row.status === "absent" ? "no such coefficient" : "";
   for (const [status, text] of statusText) if (row.status === status) said = text;
   if (row.estimate === null && page.state.unit === "sd" && choice.sd === null) said = "no standard deviation of its own";
-  field("said").textContent = said;
+  field("said").textContent = [said, beyond(axis, row.again)].filter((t) => t).join("; ");
   field("estimate").textContent = figure(row.estimate, 3);
   const se = field("se");
   se.textContent = figure(row.se, 3);
   if (row.se !== null && band && band.se > 0) small(se, "× " + figure(row.se / band.se, 3));
+  if (row.again && row.again.se !== null) small(se, "resampled " + figure(row.again.se, 3));
   field("bias").textContent = figure(row.bias, 3);
   field("root").textContent = figure(row.root, 3);
   const a = page.results.alternatives[Number(body.dataset.rung)];
@@ -137,6 +188,13 @@ function fill(page, body, row, band, axis, choice) {
   let meaning = "";
   for (const m of a.meaning) if (m.coefficient === choice.name) meaning = m.text;
   field("meaning").textContent = meaning;
+  tell(field("told"), told(row.again, row.estimate, page.results.run.resampling));
+  tell(field("prior"), posterior(row.posterior));
+}
+
+function tell(p, text) {
+  p.textContent = text;
+  p.hidden = text === "";
 }
 
 function small(cell, text) {

@@ -1,6 +1,7 @@
 import { test } from "node:test";
 import assert from "node:assert/strict";
-import { coefficientOf, inUnits, order, atPoint, quantileOf, unitOf } from "./ladder.js";
+import { readFileSync } from "node:fs";
+import { coefficientOf, inUnits, order, atPoint, quantileOf, unitOf, told, posterior } from "./ladder.js";
 
 const coefficient = (name, estimate, standardError) => ({ name, estimate, standardError, low: estimate - 2 * standardError, high: estimate + 2 * standardError, estimatedBias: 0.5, estimatedMSE: 4, status: "estimated" });
 const alternative = {
@@ -33,4 +34,17 @@ test("order sorts, and puts what has no number last", () => {
   assert.deepEqual(order(rows, "se", false), [2, 4, 0, 1, 3]);
   assert.deepEqual(order(rows, "se", true), [0, 4, 2, 1, 3]);
   assert.deepEqual(order(rows, null, false), [0, 1, 2, 3, 4]);
+});
+
+test("what was resampled is said as in the table made by hand", () => {
+  const rows = JSON.parse(readFileSync(new URL("../../testdata/told.json", import.meta.url)));
+  for (const r of rows) assert.equal(told(inUnits({ resampled: r.resampled }, 1).again, r.estimate, r.run), r.text);
+});
+
+test("what was resampled takes the unit too; without a unit nothing is said", () => {
+  const c = { ...coefficient("x", 1, 1), posteriorSD: 0.5, resampled: { standardError: 2, low: -1, high: 3, biasCorrected: { low: null, high: 4 }, sharePositive: 0.9, shareNegative: 0.1, used: 99 } };
+  const row = inUnits(c, 10);
+  assert.deepEqual([row.again.se, row.again.low, row.again.high, row.again.correctedLow, row.again.correctedHigh, row.again.positive, row.posterior], [20, -10, 30, null, 40, 0.9, 5]);
+  assert.equal(inUnits(c, null).again, null);
+  assert.equal(posterior(inUnits(c, null).posterior), "");
 });
