@@ -2,9 +2,11 @@ package compare_test
 
 import (
 	"context"
+	"encoding/json"
 	"math"
 	"math/rand/v2"
 	"os"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -298,4 +300,68 @@ func TestErrorKeys(t *testing.T) {
 			t.Errorf("%v, want %q", err, c.want)
 		}
 	}
+}
+
+// TestErrorsAgainstLibrary holds HC0-HC4, clusters one-way and two-way, and Newey-West at several lags to numpy (testdata/reference-errors/values.json,
+// made by .ci/reference/errors.py), on Longley's series and the wage survey.
+func TestErrorsAgainstLibrary(t *testing.T) {
+	raw, err := os.ReadFile("../testdata/reference-errors/values.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var values struct {
+		Longley struct {
+			Regressors              []string
+			Robust, Autocorrelation map[string][]float64
+		}
+		Wages struct {
+			Regressors []string
+			Robust     map[string][]float64
+			Occupation []float64
+			TwoWay     []float64 `json:"occupation and sector"`
+		}
+	}
+	if err := json.Unmarshal(raw, &values); err != nil {
+		t.Fatal(err)
+	}
+	run := func(file, equation, rel string, set func(*compare.Study), names []string, want []float64) {
+		t.Helper()
+		data, err := os.ReadFile("../testdata/" + file + "/data.csv")
+		if err != nil {
+			t.Fatal(err)
+		}
+		s := newStudy(equation)
+		set(s)
+		for _, r := range []string{"drop", "drop-by-rule", "index", "components", "ridge", "center"} {
+			s.Remedies = append(s.Remedies, compare.RemedySetting{Remedy: r, Off: true})
+		}
+		c, err := compare.Run(context.Background(), text(t, string(data)), s, compare.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		tolerance := map[string]float64{"longley": 1e-8, "wages": 1e-10}[file] // numpy in float64 on a condition number of 1e5
+		for i, name := range names {
+			if k := coefficient(t, c.Alternatives[0], name); math.Abs(k.SE/want[i]-1) > tolerance {
+				t.Errorf("%s %s %s: %.14g, numpy %.14g", file, rel, name, k.SE, want[i])
+			}
+		}
+	}
+	longley := "employed = deflator + gnp + unemployed + armed_forces + population + year"
+	wages := "ln(wage) = education + experience + union"
+	for variant, want := range values.Longley.Robust {
+		run("longley", longley, variant, func(s *compare.Study) { s.Errors = compare.ErrorSpec{Kind: "robust", Variant: variant} }, values.Longley.Regressors, want)
+		run("wages", wages, variant, func(s *compare.Study) { s.Errors = compare.ErrorSpec{Kind: "robust", Variant: variant} }, values.Wages.Regressors, values.Wages.Robust[variant])
+	}
+	for text, want := range values.Longley.Autocorrelation {
+		lags, err := strconv.Atoi(text)
+		if err != nil {
+			t.Fatal(err)
+		}
+		run("longley", longley, text+" lags", func(s *compare.Study) {
+			s.Time, s.Errors = "year", compare.ErrorSpec{Kind: "autocorrelation", Lags: &lags}
+		}, values.Longley.Regressors, want)
+	}
+	run("longley", longley, "the rule's 2 lags", func(s *compare.Study) { s.Time = "year" }, values.Longley.Regressors, values.Longley.Autocorrelation["2"])
+	run("wages", wages, "occupation", func(s *compare.Study) { s.Clusters = []string{"occupation"} }, values.Wages.Regressors, values.Wages.Occupation)
+	run("wages", wages, "two-way", func(s *compare.Study) { s.Clusters = []string{"occupation", "sector"} }, values.Wages.Regressors, values.Wages.TwoWay)
 }
