@@ -54,6 +54,7 @@ type Comparison struct {
 	Alternatives  []*Alternative
 	Resampling    Resampling
 	Simulation    Simulation
+	Plans         []remedy.Plan
 	NotApplicable []NotApplicable
 	Notes         []design.Note
 }
@@ -241,6 +242,7 @@ func (c *Comparison) problem(sample *linear.Sample) error {
 		pr.Rows = c.rows
 	}
 	c.Problem = pr
+	pr.Smallest = c.Smallest
 	c.Focal, c.FocalDeclared = focal, len(focal) > 0
 	if !c.FocalDeclared {
 		c.Focal = []int{c.mostTangled()}
@@ -396,6 +398,9 @@ func (c *Comparison) variants() []choice {
 		if off[r.Key] {
 			c.NotApplicable = append(c.NotApplicable, NotApplicable{r.Key, r.Key, "switched off in the study"})
 			continue
+		}
+		if r.Plan != nil {
+			c.Plans = append(c.Plans, r.Plan(&remedy.Final{Problem: c.Problem, AsIs: c.AsIs, S: c.S, DF: c.DF})...)
 		}
 		vs, not := r.Variants(c.Problem)
 		for _, n := range not {

@@ -116,8 +116,12 @@ func TestEveryRemedyConforms(t *testing.T) {
 				}
 			}
 			p, tr, red := problem(t, asWritten, unit)
+			asked(p)
 			before := fmt.Sprintf("%v %v %v %v", p.Names, p.Monomials, p.Tangled, p.Groups)
 			variants, _ := r.Variants(p)
+			if r.Plan != nil {
+				return // it fits nothing; its plan has a test of its own
+			}
 			if len(variants) == 0 {
 				t.Fatal("offers nothing on a problem with a tangle, a group, a square and a dummy")
 			}
@@ -132,6 +136,11 @@ func TestEveryRemedyConforms(t *testing.T) {
 			rescaling(t, r, variants, tr)
 		})
 	}
+}
+
+// asked fills in what remedies offer only on request.
+func asked(p *remedy.Problem) {
+	p.Settings.Columns = map[string][]int{"residualize.of": {0}, "residualize.on": {1}}
 }
 
 func conform(t *testing.T, p *remedy.Problem, tr remedy.Training, red *reduction.Reduction, v remedy.Variant) {
@@ -192,6 +201,7 @@ func conform(t *testing.T, p *remedy.Problem, tr remedy.Training, red *reduction
 // rowOrder: the same rows in another order give the same fit.
 func rowOrder(t *testing.T, r remedy.Remedy, variants []remedy.Variant, tr remedy.Training) {
 	p, other, _ := problem(t, reversed, unit)
+	asked(p)
 	moved, _ := r.Variants(p)
 	for i, v := range variants {
 		a, b := v.Learn(tr), moved[i].Learn(other)
@@ -208,6 +218,7 @@ func rowOrder(t *testing.T, r remedy.Remedy, variants []remedy.Variant, tr remed
 func rescaling(t *testing.T, r remedy.Remedy, variants []remedy.Variant, tr remedy.Training) {
 	scale := []float64{1, 100, 1, 1, 1, 1}
 	p, other, _ := problem(t, asWritten, scale)
+	asked(p)
 	moved, _ := r.Variants(p)
 	for i, v := range variants {
 		if strings.HasSuffix(v.Key, ":sum") {
@@ -312,5 +323,177 @@ func TestInverseCovarianceWeights(t *testing.T) {
 	}
 	if seen != 2 {
 		t.Errorf("%d of 2 variants", seen)
+	}
+}
+
+// TestOtherCoordinates: least squares on regressors written as orthogonal polynomials, and on a residual, formed here row by row, gives the coefficients
+// that the remedies report from plain least squares; residuals are those of the other regressors by the definition, fitted with Gauss elimination.
+func TestOtherCoordinates(t *testing.T) {
+	const n = 30
+	x, z, y := make([]float64, n), make([]float64, n), make([]float64, n)
+	rng := rand.New(rand.NewPCG(4, 2))
+	for i := range n {
+		x[i] = 3 + rng.NormFloat64()
+		z[i] = 0.7*x[i] + rng.NormFloat64()
+		y[i] = 1 + x[i] - 0.4*x[i]*x[i] + 0.1*x[i]*x[i]*x[i] + 0.5*z[i] + rng.NormFloat64()
+	}
+	power := func(k int) reduction.Column {
+		c := reduction.Column{}
+		for _, v := range x {
+			c.Hi = append(c.Hi, math.Pow(v, float64(k)))
+		}
+		return c
+	}
+	plain := []reduction.Column{power(1), power(2), power(3), {Hi: z}}
+	sample := func(cols []reduction.Column) *linear.Sample {
+		red, err := reduction.Reduce(cols, reduction.Column{Hi: y}, true, reduction.Split{}, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return linear.NewSample(red, red.Total)
+	}
+	// net takes the constant and some columns out of a column, by least squares with one column after the other made orthogonal.
+	net := func(c reduction.Column, others ...reduction.Column) reduction.Column {
+		ones := make([]float64, n)
+		for i := range ones {
+			ones[i] = 1
+		}
+		basis := [][]float64{ones}
+		take := func(v []float64) []float64 {
+			v = append([]float64{}, v...)
+			for range 2 {
+				for _, b := range basis {
+					var vb, bb float64
+					for i := range v {
+						vb += v[i] * b[i]
+						bb += b[i] * b[i]
+					}
+					for i := range v {
+						v[i] -= vb / bb * b[i]
+					}
+				}
+			}
+			return v
+		}
+		for _, o := range others {
+			basis = append(basis, take(o.Hi))
+		}
+		return reduction.Column{Hi: take(c.Hi)}
+	}
+	s := sample(plain)
+	one := func(a string, k int) []remedy.Factor { return []remedy.Factor{{Atom: a, Power: k}} }
+	p := &remedy.Problem{Names: []string{"x", "x^2", "x^3", "z"}, Constant: true, Monomials: [][]remedy.Factor{one("x", 1), one("x", 2), one("x", 3), one("z", 1)},
+		Category: make([]string, 4), Focal: make([]bool, 4), Keep: make([]bool, 4), Tangled: make([]bool, 4), Sample: s}
+	p.Settings.Columns = map[string][]int{"residualize.of": {3}, "residualize.on": {0}}
+	as := s.LeastSquares(true)
+	value := append([]float64{as.Constant(s)}, as.Slopes...)
+	for key, cols := range map[string][]reduction.Column{
+		"orthogonal":  {plain[0], net(plain[1], plain[0]), net(plain[2], plain[0], plain[1]), plain[3]},
+		"residualize": {plain[0], plain[1], plain[2], net(plain[3], plain[0])},
+	} {
+		r, _ := remedy.Find(key)
+		variants, not := r.Variants(p)
+		if len(variants) != 1 {
+			t.Fatalf("%s: %v", key, not)
+		}
+		fit := variants[0].Learn(remedy.Training{Sample: s, Final: true})
+		d := variants[0].Describe(&remedy.Final{Problem: p, Fitted: fit, RSS: as.RSS, AsIs: as, S: 1, DF: 25})
+		other := sample(cols)
+		want := other.LeastSquares(true)
+		expected := append([]float64{want.Constant(other)}, want.Slopes...)
+		factor := linear.Embed(5, 5, d.Report, fit.Factor)
+		wantFactor := want.Factor(other)
+		for i := range 5 {
+			got := 0.0
+			for j := range 5 {
+				got += d.Report[i*5+j] * value[j]
+			}
+			if math.Abs(got-expected[i]) > 1e-8*(1+math.Abs(expected[i])) {
+				t.Errorf("%s: coefficient %d is %.12g, want %.12g", key, i, got, expected[i])
+			}
+			if math.Abs(factor[i*5+i]-wantFactor[i*5+i]) > 1e-8*wantFactor[i*5+i] {
+				t.Errorf("%s: variance factor %d is %.12g, want %.12g", key, i, factor[i*5+i], wantFactor[i*5+i])
+			}
+		}
+	}
+}
+
+// TestMoreDataPlan: with rows that are there twice the half width falls by the root of two and the rows needed for half the width now are four times as
+// many; the direction is the best of many tried by brute force, each added as a row; all from the definition.
+func TestMoreDataPlan(t *testing.T) {
+	const n = 25
+	rng := rand.New(rand.NewPCG(3, 8))
+	cols := make([]reduction.Column, 3)
+	y := reduction.Column{}
+	for range n {
+		c := rng.NormFloat64()
+		for j, v := range []float64{10 + 2*c + 0.5*rng.NormFloat64(), c + 0.3*rng.NormFloat64(), 100 * rng.NormFloat64()} {
+			cols[j].Hi = append(cols[j].Hi, v)
+		}
+		y.Hi = append(y.Hi, c+rng.NormFloat64())
+	}
+	sample := func(extra []float64) *linear.Sample {
+		x := make([]reduction.Column, 3)
+		for j := range x {
+			x[j].Hi = append([]float64{}, cols[j].Hi...)
+			if extra != nil {
+				x[j].Hi = append(x[j].Hi, extra[j])
+			}
+		}
+		v := reduction.Column{Hi: append([]float64{}, y.Hi...)}
+		if extra != nil {
+			v.Hi = append(v.Hi, 0)
+		}
+		red, err := reduction.Reduce(x, v, true, reduction.Split{}, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return linear.NewSample(red, red.Total)
+	}
+	s := sample(nil)
+	p := &remedy.Problem{Names: []string{"a", "b", "c"}, Constant: true, Monomials: make([][]remedy.Factor, 3), Category: make([]string, 3), Focal: []bool{false, true, false},
+		Keep: make([]bool, 3), Tangled: make([]bool, 3), Smallest: []float64{math.NaN(), 0.1, math.NaN()}, Sample: s}
+	as := s.LeastSquares(true)
+	r, _ := remedy.Find("more-data")
+	plans := r.Plan(&remedy.Final{Problem: p, AsIs: as, S: 0.9, DF: 21})
+	if len(plans) != 1 || plans[0].Coefficient != "b" || plans[0].Reason != "" {
+		t.Fatalf("%+v", plans)
+	}
+	plan := plans[0]
+	half := 2.079613844727662 * 0.9 * math.Sqrt(as.Inverse[4]) // t(21), common tables
+	if math.Abs(plan.HalfWidth-half) > 1e-9*half {
+		t.Errorf("half width %g, want %g", plan.HalfWidth, half)
+	}
+	if plan.Targets[0].Rows != 4*n {
+		t.Errorf("half the width takes %g rows, want %d", plan.Targets[0].Rows, 4*n)
+	}
+	vif := s.InflationFactors()[1]
+	if want := math.Ceil(4 * n / vif); plan.Targets[0].Untangled != want {
+		t.Errorf("untangled %g rows, want %g", plan.Targets[0].Untangled, want)
+	}
+	last := plan.Targets[len(plan.Targets)-1]
+	if want := math.Ceil(n * half * half / 0.01); math.Abs(last.Rows-want) > 1 || last.HalfWidth != 0.1 {
+		t.Errorf("%+v, want %g rows", last, want)
+	}
+	gain := func(offset []float64) float64 {
+		row := make([]float64, 3)
+		for j := range row {
+			row[j] = s.Mean[j].Float() + offset[j]
+		}
+		return 1 - math.Sqrt(sample(row).LeastSquares(true).Inverse[4]/as.Inverse[4])
+	}
+	best := []float64{plan.Direction[0].Value, plan.Direction[1].Value, plan.Direction[2].Value}
+	if g := gain(best); math.Abs(g-plan.Gain) > 1e-9 {
+		t.Errorf("the row narrows the standard error by %g, the plan says %g", g, plan.Gain)
+	}
+	for range 2000 {
+		z := []float64{rng.NormFloat64(), rng.NormFloat64(), rng.NormFloat64()}
+		length := math.Sqrt(z[0]*z[0] + z[1]*z[1] + z[2]*z[2])
+		for j := range z {
+			z[j] *= math.Sqrt(3) / length * s.SD(j)
+		}
+		if g := gain(z); g > plan.Gain+1e-9 {
+			t.Fatalf("a row at %v narrows the standard error by %g, the plan's by %g", z, g, plan.Gain)
+		}
 	}
 }

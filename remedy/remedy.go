@@ -31,6 +31,8 @@ type Remedy struct {
 	Options []Option
 	// Variants lists what the remedy offers for the problem, and what does not apply and why. It must not change the problem.
 	Variants func(*Problem) ([]Variant, []NotApplicable)
+	// Plan works out something that is not a fit, for each coefficient of interest; nil where the remedy has none. Final.Fitted is that of as-is.
+	Plan func(*Final) []Plan
 }
 
 // Option is a setting of a remedy: `--set KEY=VALUE` or remedies: {remedy: {name: value}} in a study file.
@@ -63,6 +65,7 @@ type Problem struct {
 	Monomials [][]Factor // the powers and products as factors of atoms; nil for a column that is neither number nor product
 	Category  []string   // the category whose dummy the column is, or ""
 	Focal     []bool
+	Smallest  []float64 // smallest effect of interest, NaN where none is declared; nil: none at all
 	Keep      []bool
 	Tangled   []bool
 	Groups    []Group

@@ -571,3 +571,31 @@ func Root(a []float64, m int) (root []float64, rank int) {
 	}
 	return root, rank
 }
+
+// SolvePositive returns the x with A x = b for a symmetric positive definite p x p matrix (row-major, unchanged); ok is false where it is not clearly
+// positive. Cost O(p^3).
+func SolvePositive(a []float64, p int, b []float64) (x []float64, ok bool) {
+	scale := make([]float64, p)
+	m := make([]float64, p*p)
+	for i := range p {
+		scale[i] = math.Sqrt(a[i*p+i])
+	}
+	for i := range p {
+		for j := range p {
+			m[i*p+j] = a[i*p+j] / scale[i] / scale[j]
+		}
+	}
+	if !cholesky(m, p) {
+		return nil, false
+	}
+	x = make([]float64, p)
+	for i := range x {
+		x[i] = b[i] / scale[i]
+	}
+	solveLower(m, p, x)
+	solveUpper(m, p, x)
+	for i := range x {
+		x[i] /= scale[i]
+	}
+	return x, true
+}

@@ -36,6 +36,17 @@ func Build(c *compare.Comparison, study, toolVersion string) *Results {
 	for _, t := range c.Simulation.Truths {
 		r.Simulations.Truths = append(r.Simulations.Truths, Truth{t.Name, t.Text})
 	}
+	r.Plans = []Plan{}
+	for _, p := range c.Plans {
+		plan := Plan{Coefficient: p.Coefficient, HalfWidth: Num(p.HalfWidth), Targets: []PlanTarget{}, Direction: []NamedValue{}, Gain: Num(p.Gain), Reason: p.Reason, Text: p.Text}
+		for _, t := range p.Targets {
+			plan.Targets = append(plan.Targets, PlanTarget{t.What, Num(t.HalfWidth), Num(t.Rows), Num(t.Untangled)})
+		}
+		for _, d := range p.Direction {
+			plan.Direction = append(plan.Direction, NamedValue{d.Name, Num(d.Value)})
+		}
+		r.Plans = append(r.Plans, plan)
+	}
 	for _, n := range c.NotApplicable {
 		r.NotApplicable = append(r.NotApplicable, NotApplicable{n.Key, n.Remedy, n.Reason})
 	}

@@ -29,6 +29,7 @@ type Results struct {
 	Diagnosis     Diagnosis       `json:"diagnosis"`
 	Alternatives  []Alternative   `json:"alternatives"`
 	Simulations   Simulations     `json:"simulations"`
+	Plans         []Plan          `json:"plans"` // what more data would bring, one a declared focal coefficient
 	NotApplicable []NotApplicable `json:"notApplicable"`
 	Advice        Advice          `json:"advice"`
 	Notes         []Note          `json:"notes"`
@@ -485,6 +486,25 @@ type Simulations struct {
 type Truth struct {
 	Name string `json:"name"`
 	Text string `json:"text"`
+}
+
+// Plan says how many rows a narrower interval would take, and where a new row would help most.
+type Plan struct {
+	Coefficient string       `json:"coefficient"`
+	HalfWidth   Num          `json:"halfWidth"` // of the 95 % interval when left alone
+	Targets     []PlanTarget `json:"targets"`
+	Direction   []NamedValue `json:"direction"` // offsets from the means; their root mean square is one standard deviation; empty beside a reason
+	Gain        Num          `json:"gain"`      // share by which that row narrows the standard error
+	Reason      string       `json:"reason,omitempty"`
+	Text        string       `json:"text"`
+}
+
+// PlanTarget is a half width and the rows it takes.
+type PlanTarget struct {
+	What      string `json:"what"`
+	HalfWidth Num    `json:"halfWidth"`
+	Rows      Num    `json:"rows"`
+	Untangled Num    `json:"untangled"`
 }
 
 // NotApplicable is a remedy that does not apply here, and why.
