@@ -497,3 +497,72 @@ func TestMoreDataPlan(t *testing.T) {
 		}
 	}
 }
+
+// TestAllLeftIn: the weights are partial covariances with y, formed here from residuals on the other regressor; the combined effect is their sum times the
+// slopes (Lubotsky and Wittenberg 2006). With proxies of
+// z and y = 2 z + ..., it lies closer to 2 than the first proxy's own slope.
+func TestAllLeftIn(t *testing.T) {
+	const n = 4000
+	rng := rand.New(rand.NewPCG(31, 7))
+	cols := make([]reduction.Column, 3) // two proxies and a control
+	y := reduction.Column{}
+	for range n {
+		w := rng.NormFloat64()
+		z := 0.5*w + rng.NormFloat64()
+		for j, v := range []float64{z + 0.8*rng.NormFloat64(), 3*z + 2*rng.NormFloat64(), w} {
+			cols[j].Hi = append(cols[j].Hi, v)
+		}
+		y.Hi = append(y.Hi, 2*z+w+rng.NormFloat64())
+	}
+	red, err := reduction.Reduce(cols, y, true, reduction.Split{}, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s := linear.NewSample(red, red.Total)
+	p := &remedy.Problem{Names: []string{"x1", "x2", "w"}, Constant: true, Monomials: make([][]remedy.Factor, 3), Category: make([]string, 3), Focal: make([]bool, 3), Keep: make([]bool, 3),
+		Tangled: make([]bool, 3), Groups: []remedy.Group{{Name: "g", Columns: []int{0, 1}, ByUser: true}}, Sample: s}
+	r, _ := remedy.Find("index")
+	variants, _ := r.Variants(p)
+	as := s.LeastSquares(true)
+	for _, v := range variants {
+		if v.Key != "index:g:all-in" {
+			continue
+		}
+		fit := v.Learn(remedy.Training{Sample: s, Final: true})
+		d := v.Describe(&remedy.Final{Problem: p, Fitted: fit, RSS: as.RSS, AsIs: as, S: 1, DF: n - 4})
+		// Partial covariances: residuals on the constant and w.
+		residual := func(c []float64) []float64 {
+			var mc, mw, cw, ww float64
+			for i := range c {
+				mc += c[i] / n
+				mw += cols[2].Hi[i] / n
+			}
+			for i := range c {
+				cw += (c[i] - mc) * (cols[2].Hi[i] - mw)
+				ww += (cols[2].Hi[i] - mw) * (cols[2].Hi[i] - mw)
+			}
+			out := make([]float64, n)
+			for i := range c {
+				out[i] = c[i] - mc - cw/ww*(cols[2].Hi[i]-mw)
+			}
+			return out
+		}
+		e := residual(y.Hi)
+		var c1, c2 float64
+		x1, x2 := residual(cols[0].Hi), residual(cols[1].Hi)
+		for i := range e {
+			c1 += e[i] * x1[i]
+			c2 += e[i] * x2[i]
+		}
+		w := d.Derived[0].Weights
+		if math.Abs(w[1]-1) > 1e-12 || math.Abs(w[2]-c2/c1) > 1e-9*math.Abs(c2/c1) || w[3] != 0 {
+			t.Errorf("weights %v, want 1 and %g", w[1:], c2/c1)
+		}
+		combined := w[1]*as.Slopes[0] + w[2]*as.Slopes[1]
+		if combined > 2 || combined < as.Slopes[0] || 2-combined > 2-as.Slopes[0] {
+			t.Errorf("combined effect %g, the first slope %g, the truth 2", combined, as.Slopes[0])
+		}
+		return
+	}
+	t.Fatal("no index:g:all-in")
+}

@@ -2,6 +2,7 @@ package remedy
 
 import (
 	"fmt"
+	"math"
 	"strings"
 
 	"modelmend/fit/linear"
@@ -24,6 +25,7 @@ var _ = register(Remedy{
 		"Kling, Liebman and Katz (2007), Econometrica 75(1), 83-119 (mean of z-scores)",
 		"Anderson (2008), Journal of the American Statistical Association 103(484), 1481-1495 (inverse covariance)",
 		"Filmer and Pritchett (2001), Demography 38(1), 115-132 (first component)",
+		"Lubotsky and Wittenberg (2006), Review of Economics and Statistics 88(3), 549-562 (all proxies left in)",
 		"Jolliffe (2002), Principal Component Analysis, Springer",
 	},
 	Variants: indexVariants,
@@ -74,7 +76,65 @@ func indexVariants(p *Problem) (out []Variant, not []NotApplicable) {
 			out = append(out, p.indexVariant("index:"+g.Name+":weights", g, m))
 		}
 	}
+	for _, g := range p.Groups {
+		if g.ByUser && p.cannotMerge(g) == "" {
+			out = append(out, p.allIn(g))
+		}
+	}
 	return out, not
+}
+
+// allIn leaves every member of a group in the equation and adds up what they say of one concept, in units of the first member.
+func (p *Problem) allIn(g Group) Variant {
+	return Variant{
+		Key: "index:" + g.Name + ":all-in", Label: "All of " + strings.ReplaceAll(g.Name, "+", " + ") + " left in", OwnVariance: true,
+		Summary: "Least squares with every regressor; what " + join(p.names(g.Columns)) + " say of one concept is added up afterwards.",
+		Learn:   learnAsIs,
+		Describe: func(f *Final) Description {
+			d := describeAsIs(f)
+			if f.AsIs.NotIdentified != nil {
+				return d
+			}
+			w, ok := combinedWeights(f, g.Columns)
+			if !ok {
+				d.Notes = append(d.Notes, Note{"no-combined-effect", p.Names[g.Columns[0]] + " has no association with the dependent variable to measure the others by"})
+				return d
+			}
+			own := Derived{Name: g.Name, Weights: make([]float64, p.q()), Status: Estimated,
+				Meaning: "the combined effect of " + join(p.names(g.Columns)) + " as signs of one concept, for one unit of the concept on the scale of " + p.Names[g.Columns[0]]}
+			for i, c := range g.Columns {
+				own.Weights[p.offset()+c] = w[i]
+				d.Weights = append(d.Weights, NamedValue{p.Names[c], w[i]})
+			}
+			d.Derived = append(d.Derived, own)
+			d.Costs = append(d.Costs, "the standard error of the combined effect takes the weights as given, though they come from the dependent variable; it is at least as close to zero bias as any index of these members, if they measure one concept with independent errors (Lubotsky and Wittenberg 2006)")
+			return d
+		},
+	}
+}
+
+// combinedWeights returns rho_j = cov(y, x_j) / cov(y, x_1), the other regressors taken out of both: with C the inverse of the cross-products and b the
+// slopes, these covariances are in proportion to (C_gg)^-1 b_g.
+//
+// Source: Lubotsky and Wittenberg (2006), Review of Economics and Statistics 88(3), 549-562.
+func combinedWeights(f *Final, cols []int) ([]float64, bool) {
+	p, m := len(f.AsIs.Slopes), len(cols)
+	c, b := make([]float64, m*m), make([]float64, m)
+	for i, a := range cols {
+		b[i] = f.AsIs.Slopes[a]
+		for j, o := range cols {
+			c[i*m+j] = f.AsIs.Inverse[a*p+o]
+		}
+	}
+	r, ok := linear.SolvePositive(c, m, b)
+	if !ok || math.Abs(r[0]) == 0 {
+		return nil, false
+	}
+	first := r[0]
+	for i := range r {
+		r[i] /= first
+	}
+	return r, true
 }
 
 // cannotMerge says why a group cannot be merged, or nothing.

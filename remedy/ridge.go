@@ -50,7 +50,22 @@ func ridgeVariants(p *Problem) ([]Variant, []NotApplicable) {
 		summary += " Not penalised: " + join(p.names(spare)) + "."
 	}
 	r := ridgeFit{p: p, spare: spare}
-	return []Variant{{Key: "ridge", Label: "Ridge", Summary: summary, Learn: r.learn, Describe: r.describe}}, nil
+	out := []Variant{{Key: "ridge", Label: "Ridge", Summary: summary, Learn: r.learn, Describe: r.describe}}
+	// A coefficient of interest that is tangled should not be shrunk itself: the others are, beside it.
+	var focal []int
+	tangled := false
+	for j, f := range p.Focal {
+		if f {
+			focal = append(focal, j)
+			tangled = tangled || p.Tangled[j]
+		}
+	}
+	if tangled && len(spare) == 0 && len(focal) < len(p.Names) {
+		r := ridgeFit{p: p, spare: focal}
+		out = append(out, Variant{Key: "ridge:focal-spared", Label: "Ridge, " + join(p.names(focal)) + " spared",
+			Summary: "Standardised slopes shrunk towards zero, but for " + join(p.names(focal)) + ", which the penalty leaves out.", Learn: r.learn, Describe: r.describe})
+	}
+	return out, nil
 }
 
 type ridgeFit struct {
