@@ -33,6 +33,7 @@ type Alternative struct {
 	DF           float64
 	RSS          float64
 	R2           float64
+	Rows         int // learned on
 	Out          OutOfSample
 	OutApart     *OutOfSample // with folds that keep clusters or stretches of time together, beside random ones (see Comparison.Leak); else nil
 	// TuningResampled is nil where nothing is tuned, the user fixed the value, or nothing was resampled.
@@ -40,8 +41,12 @@ type Alternative struct {
 	Simulated       []Simulated // by coefficient and truth
 
 	// Of each kind but the classical one; nil where only that is computed.
+	frame       *frame
 	middles     *middles
 	covariances map[string][]float64 // of (constant, slopes), q x q
+
+	own    *ownRows       // nil: learned on the design
+	sample *linear.Sample // all rows that it is learned on
 
 	value []float64 // (constant, slopes)
 	diff  []float64 // covariance of (value - as-is) over sigma^2, q x q
@@ -90,6 +95,8 @@ type Fold struct {
 	Chosen             float64 // the tuning chosen inside; NaN without tuning
 	sse, sst           float64
 	train              int
+	own                bool    // learned on rows of its own
+	base               float64 // then: squared error of as-is on the same held-out rows
 }
 
 func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choices []choice, opt Options) error {
@@ -100,12 +107,16 @@ func (c *Comparison) fitAll(ctx context.Context, red *reduction.Reduction, choic
 		final.Inner = append(final.Inner, p.inner()...)
 	}
 	c.Alternatives = make([]*Alternative, len(choices))
-	folds, err := c.outOfSample(ctx, parts, choices, opt)
+	own, err := c.ofChoices(choices, c.Plan, opt)
+	if err != nil {
+		return err
+	}
+	folds, err := c.outOfSample(ctx, parts, choices, own, opt)
 	if err != nil {
 		return err
 	}
 	if err := each(ctx, len(choices), opt.Workers, func(i int) {
-		c.Alternatives[i] = c.alternative(choices[i], final)
+		c.Alternatives[i] = c.alternative(choices[i], final, own[i])
 	}); err != nil {
 		return err
 	}
@@ -160,7 +171,11 @@ func (c *Comparison) measureLeak(ctx context.Context, choices []choice, light bo
 	if err != nil {
 		return err
 	}
-	got, err := c.outOfSample(ctx, foldParts(red, p.Window, light), choices, opt)
+	own, err := c.ofChoices(choices, p, opt)
+	if err != nil {
+		return err
+	}
+	got, err := c.outOfSample(ctx, foldParts(red, p.Window, light), choices, own, opt)
 	if err != nil {
 		return err
 	}
@@ -180,7 +195,7 @@ func (c *Comparison) measureLeak(ctx context.Context, choices []choice, light bo
 }
 
 // outOfSample learns every variant on the training rows of every fold and predicts the held-out ones. Result: [variant][split].
-func (c *Comparison) outOfSample(ctx context.Context, repeats []*parts, choices []choice, opt Options) ([][]Fold, error) {
+func (c *Comparison) outOfSample(ctx context.Context, repeats []*parts, choices []choice, own []*ownRows, opt Options) ([][]Fold, error) {
 	type place struct{ repeat, fold int }
 	var places []place
 	for r, p := range repeats {
@@ -197,8 +212,16 @@ func (c *Comparison) outOfSample(ctx context.Context, repeats []*parts, choices 
 	err := each(ctx, len(places), opt.Workers, func(k int) {
 		p := places[k]
 		t, held := repeats[p.repeat].training(p.fold)
+		var asIs *remedy.Fitted
 		for i, ch := range choices {
+			if own[i] != nil {
+				out[i][k] = own[i].learnFold(ch.variant, p.repeat, p.fold, asIs, t.Sample)
+				continue
+			}
 			fit := ch.variant.Learn(t)
+			if i == 0 {
+				asIs = fit
+			}
 			f := Fold{Repeat: p.repeat, Fold: p.fold, Rows: held.N, sse: held.SSE(fit.Slopes), sst: held.SST(), Chosen: math.NaN(), train: t.Sample.N}
 			f.MSE = f.sse / float64(held.N)
 			if fit.Tuning != nil {
@@ -225,9 +248,14 @@ func summarize(folds, asIs []Fold, rolling bool) OutOfSample {
 	for k, f := range folds {
 		sse += f.sse
 		sst += f.sst
-		base += asIs[k].sse
 		rows += float64(f.Rows)
-		d[k] = f.MSE - asIs[k].MSE
+		if f.own {
+			base += f.base
+			d[k] = f.MSE - f.base/float64(f.Rows)
+		} else {
+			base += asIs[k].sse
+			d[k] = f.MSE - asIs[k].MSE
+		}
 		test += float64(f.Rows)
 		train += float64(f.train)
 	}
@@ -305,9 +333,17 @@ func RollingInterval(d []float64) Interval {
 }
 
 // alternative fits one variant to all rows; state then puts it on the user's regressors.
-func (c *Comparison) alternative(ch choice, final remedy.Training) *Alternative {
+func (c *Comparison) alternative(ch choice, final remedy.Training, own *ownRows) *Alternative {
 	sample := c.Problem.Sample
-	a := &Alternative{Key: ch.variant.Key, Remedy: ch.remedy, Variant: ch.variant}
+	a := &Alternative{Key: ch.variant.Key, Remedy: ch.remedy, Variant: ch.variant, own: own}
+	if own != nil {
+		sample = own.sample
+		final = remedy.Training{Sample: sample, Final: true}
+		for _, p := range own.parts {
+			final.Inner = append(final.Inner, p.inner()...)
+		}
+	}
+	a.sample, a.Rows = sample, sample.N
 	a.Fitted = ch.variant.Learn(final)
 	a.RSS = sample.RSS(a.Fitted.Slopes)
 	a.S, a.DF = c.S, c.DF
@@ -323,25 +359,28 @@ func (c *Comparison) alternative(ch choice, final remedy.Training) *Alternative 
 	}
 	a.R2 = 1 - a.RSS/sample.YY.Float()
 	f := &remedy.Final{Problem: c.Problem, Fitted: a.Fitted, RSS: a.RSS, AsIs: c.AsIs, S: c.S, DF: c.DF}
+	if own != nil {
+		f.Sample = own.sample
+	}
 	a.Description = ch.variant.Describe(f)
 	return a
 }
 
 // state fills the coefficients of an alternative.
 func (c *Comparison) state(a *Alternative) {
-	sample := c.Problem.Sample
+	sample := a.sample
 	k := 0
 	if sample.Constant {
 		k = 1
 		a.value = []float64{sample.ConstantFor(a.Fitted.Slopes)}
-		a.asIs = []float64{c.AsIs.Constant(sample)}
+		a.asIs = []float64{c.AsIs.Constant(c.Problem.Sample)}
 		if a.Key == "as-is" {
 			a.value[0] = a.asIs[0]
 		}
 	}
 	a.value = append(a.value, a.Fitted.Slopes...)
 	a.asIs = append(a.asIs, c.AsIs.Slopes...)
-	a.exact = c.AsIs.NotIdentified == nil
+	a.exact = c.AsIs.NotIdentified == nil && a.own == nil
 	a.s0 = c.S
 	kind := c.kind()
 	df := kind.df
@@ -356,7 +395,7 @@ func (c *Comparison) state(a *Alternative) {
 		cross = factor
 	}
 	if a.exact && factor != nil {
-		a.diff = difference(factor, cross, c.AsIs.Factor(sample))
+		a.diff = difference(factor, cross, c.AsIs.Factor(c.Problem.Sample))
 	}
 	status := a.Fitted.Status
 	if a.Description.Status != nil {
@@ -377,7 +416,9 @@ func (c *Comparison) state(a *Alternative) {
 			if status != nil {
 				st = status[i-k]
 			}
-		} else if !identity {
+		} else if !identity && zero(w) {
+			st = remedy.Zero
+		} else if !identity || a.own != nil {
 			st = remedy.Different
 		} else if c.constantTouched(status) {
 			st = remedy.NotIdentified
@@ -397,6 +438,9 @@ func (c *Comparison) state(a *Alternative) {
 		a.Covariance = covariance(a.Description.Report, factor, q, a.S*a.S)
 	}
 	for _, e := range c.effects() {
+		if a.own != nil {
+			break // another question
+		}
 		w := make([]float64, q)
 		copy(w[k:], e.weights)
 		coef := c.coefficient(a, e.name, w, combined(status, e.weights))
@@ -417,6 +461,15 @@ func (c *Comparison) kind() ErrorKind {
 		return ErrorKind{Name: Classical, df: math.NaN()}
 	}
 	return c.ErrorKinds[0]
+}
+
+func zero(w []float64) bool {
+	for _, v := range w {
+		if v != 0 {
+			return false
+		}
+	}
+	return true
 }
 
 // constantTouched: in an exact dependency that involves a shift the constant has no value of its own either.
@@ -620,9 +673,9 @@ func (c *Comparison) Path(a *Alternative) []PathPoint {
 		if t.Cross != nil {
 			f.Cross = t.Cross(i)
 		}
-		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF, step: true, middles: a.middles}
+		step := &Alternative{Key: a.Key + " step", Fitted: f, S: a.S, DF: a.DF, step: true, middles: a.middles, own: a.own, sample: a.sample}
 		if kind := c.kind().Name; kind != Classical && f.Factor != nil && a.middles.reason[kind] == "" {
-			step.covariances = map[string][]float64{kind: c.frame.between(a.middles.of[kind], f)}
+			step.covariances = map[string][]float64{kind: a.frame.between(a.middles.of[kind], f)}
 		}
 		c.state(step)
 		out[i] = PathPoint{step.Coefficients, step.Derived}

@@ -241,6 +241,9 @@ func (c *Comparison) problem(sample *linear.Sample) error {
 	if !d.Streamed() {
 		pr.Rows = c.rows
 	}
+	if c.Periods != nil && c.Periods.Count == d.Rows {
+		pr.Order, pr.Time = c.timeOrder(true), c.Periods.Value
+	}
 	c.Problem = pr
 	pr.Smallest = c.Smallest
 	c.Focal, c.FocalDeclared = focal, len(focal) > 0

@@ -9,6 +9,7 @@ import (
 
 	"modelmend/fit/design"
 	"modelmend/fit/folds"
+	"modelmend/fit/linear"
 	"modelmend/fit/parallel"
 	"modelmend/fit/reduction"
 	"modelmend/fit/sandwich"
@@ -144,9 +145,8 @@ type frame struct {
 	back        []float64 // q x q, from standardised coefficients to the user's
 }
 
-func (c *Comparison) newFrame() *frame {
-	sample := c.Problem.Sample
-	f := &frame{p: sample.P, n: c.Design.Rows}
+func newFrame(sample *linear.Sample) *frame {
+	f := &frame{p: sample.P, n: sample.N}
 	if sample.Constant {
 		f.k = 1
 	}
@@ -215,16 +215,37 @@ type collector struct {
 	series   *sandwich.Series
 }
 
-// sandwiches passes over the rows once and forms every kind but the classical one for every alternative. Residuals and leverages are the alternative's
-// own where it is least squares on a smaller design, else those of as-is.
+// sandwiches forms every kind but the classical one for every alternative, in one pass over the design's rows and one over the rows of each alternative
+// that has its own.
 func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
-	kinds := c.ErrorKinds
-	if len(kinds) == 1 && kinds[0].Name == Classical {
+	if len(c.ErrorKinds) == 1 && c.ErrorKinds[0].Name == Classical {
 		return nil
 	}
-	c.frame = c.newFrame()
-	p, k, q, n := c.frame.p, c.frame.k, c.frame.q, c.frame.n
-	mean, scale, my := c.frame.mean, c.frame.scale, c.Problem.Sample.MeanY.Float()
+	var shared []*Alternative
+	for _, a := range c.Alternatives {
+		if a.own == nil {
+			shared = append(shared, a)
+			continue
+		}
+		order := slices.DeleteFunc(c.timeOrder(c.Periods != nil && c.Periods.Count == c.Design.Rows), func(i int) bool { return a.own.rows.Skip[i] })
+		err := c.sandwich(ctx, opt, []*Alternative{a}, order, func(yield func([]reduction.Column, []int) error) error { return yield(a.own.cols, order) })
+		if err != nil {
+			return err
+		}
+	}
+	order := c.timeOrder(c.Periods != nil && c.Periods.Count == c.Design.Rows)
+	err := c.sandwich(ctx, opt, shared, order, func(yield func([]reduction.Column, []int) error) error { return c.eachRow(order, yield) })
+	c.frame = c.Alternatives[0].frame
+	return err
+}
+
+// sandwich passes over rows once for alternatives that are learned on them. Residuals and leverages are the alternative's own where it is least squares
+// on a smaller design, else those of the first one, as-is.
+func (c *Comparison) sandwich(ctx context.Context, opt Options, alternatives []*Alternative, order []int, each func(yield func([]reduction.Column, []int) error) error) error {
+	kinds := c.ErrorKinds
+	fr := newFrame(alternatives[0].sample)
+	p, k, q, n := fr.p, fr.k, fr.q, fr.n
+	mean, scale, my := fr.mean, fr.scale, alternatives[0].sample.MeanY.Float()
 	kind := func(name string) *ErrorKind {
 		if i := slices.IndexFunc(kinds, func(e ErrorKind) bool { return e.Name == name }); i >= 0 {
 			return &kinds[i]
@@ -243,7 +264,7 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 			col.slopes[j] = a.Fitted.Slopes[j] * scale[j]
 		}
 		if leverage {
-			col.factor = c.frame.standard(a.Fitted.Factor)
+			col.factor = fr.standard(a.Fitted.Factor)
 		}
 		if robust != nil {
 			col.robust = sandwich.NewMiddle(q)
@@ -259,10 +280,10 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 		}
 		return col
 	}
-	asIs := newCollector(c.Alternatives[0])
+	asIs := newCollector(alternatives[0])
 	collectors := []*collector{asIs}
-	of := make([]*collector, len(c.Alternatives))
-	for i, a := range c.Alternatives {
+	of := make([]*collector, len(alternatives))
+	for i, a := range alternatives {
 		switch {
 		case i == 0 || !a.Variant.OwnVariance:
 			of[i] = asIs
@@ -272,7 +293,6 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 		}
 	}
 	// Rows pass in blocks, in time order where there is one.
-	order := c.timeOrder(series != nil)
 	const block = 2048
 	x, y := make([]float64, block*q), make([]float64, block)
 	row := 0
@@ -299,7 +319,7 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 			row += len(part)
 		}
 	}
-	err := c.eachRow(order, func(cols []reduction.Column, index []int) error {
+	err := each(func(cols []reduction.Column, index []int) error {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
@@ -309,8 +329,9 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 	if err != nil {
 		return err
 	}
-	for i, a := range c.Alternatives {
+	for i, a := range alternatives {
 		col := of[i]
+		a.frame = fr
 		a.middles = &middles{of: map[string]*sandwich.Middle{}, reason: map[string]string{}}
 		if robust != nil {
 			a.middles.of[Robust] = col.robust
@@ -339,7 +360,7 @@ func (c *Comparison) sandwiches(ctx context.Context, opt Options) error {
 		a.covariances = map[string][]float64{}
 		for name, m := range a.middles.of {
 			if a.middles.reason[name] == "" && a.Fitted.Factor != nil {
-				a.covariances[name] = c.frame.between(m, a.Fitted)
+				a.covariances[name] = fr.between(m, a.Fitted)
 			}
 		}
 	}

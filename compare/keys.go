@@ -16,6 +16,7 @@ type grouping struct {
 	Column string
 	Of     []int32
 	Count  int
+	Value  []float64 // of periods, by row; NaN where time is text
 }
 
 // keyColumn finds a column that a key of the study names; every row used must have a value there.
@@ -90,7 +91,10 @@ func (c *Comparison) periods(column string) (*grouping, error) {
 	if err != nil {
 		return nil, err
 	}
-	g := &grouping{Column: column, Of: make([]int32, len(c.Design.Index))}
+	g := &grouping{Column: column, Of: make([]int32, len(c.Design.Index)), Value: make([]float64, len(c.Design.Index))}
+	for i, row := range c.Design.Index {
+		g.Value[i] = col.Value(row).Float()
+	}
 	if col.Kind == dataset.Number {
 		values := make([]float64, 0, len(c.Design.Index))
 		for _, row := range c.Design.Index {

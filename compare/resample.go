@@ -75,6 +75,31 @@ type rowSource struct {
 	window *folds.Window
 	light  *reduction.Units
 	heavy  func(weight []float64) *reduction.Reduction
+
+	unit, of []int32 // by row used: its unit and its fold; nil where groups were dealt in passing
+}
+
+// own gives the same draws of the rows of a variant that has its own.
+func (s *rowSource) own(o *ownRows) *rowSource {
+	pick := func(v []int32) []int32 {
+		out := make([]int32, len(o.index))
+		for k, i := range o.index {
+			out[k] = v[i]
+		}
+		return out
+	}
+	all := make([]reduction.Column, len(o.cols))
+	for j, c := range o.cols {
+		all[j] = picked(c, o.index)
+	}
+	unit, of := pick(s.unit), pick(s.of)
+	out := &rowSource{kind: s.kind, units: s.units, block: s.block, folds: s.folds, window: s.window}
+	if linear.EnoughForLight(o.sample, resamplesLight) {
+		out.light = reduction.NewUnits(o.red, all, unit, s.units, of, s.folds)
+	} else {
+		out.heavy = func(w []float64) *reduction.Reduction { return o.red.Weighted(all, unit, of, s.folds, w) }
+	}
+	return out
 }
 
 // weighted gives the parts of several weightings of the units.
@@ -140,6 +165,7 @@ func (c *Comparison) rowSource(red *reduction.Reduction) *rowSource {
 	default:
 		s.kind, s.units, unit = c.rowUnits(of, s.folds, red.P)
 	}
+	s.unit, s.of = unit, of
 	cols := append(append([]reduction.Column{}, c.Design.Columns()...), c.Design.Y)
 	if light {
 		s.light = reduction.NewUnits(red, cols, unit, s.units, of, s.folds)
@@ -226,9 +252,13 @@ func newReplicates(alternatives, count, q int) *replicates {
 	return r
 }
 
-// learn puts every choice, learned on t, at place b.
-func (r *replicates) learn(choices []choice, t remedy.Training, b int) {
+// learn puts every choice, learned on its training rows, at place b: those of own where it has some, else shared.
+func (r *replicates) learn(choices []choice, shared remedy.Training, own map[int]remedy.Training, b int) {
 	for i, ch := range choices {
+		t, has := own[i]
+		if !has {
+			t = shared
+		}
 		fit := ch.variant.Learn(t)
 		to := r.values[i][b*r.q : (b+1)*r.q]
 		k := r.q - len(fit.Slopes)
@@ -265,6 +295,12 @@ func (c *Comparison) resample(ctx context.Context, red *reduction.Reduction, cho
 	if red.Constant {
 		q++
 	}
+	own := map[int]*rowSource{}
+	for i, a := range c.Alternatives {
+		if a.own != nil {
+			own[i] = source.own(a.own)
+		}
+	}
 	drawn := newReplicates(len(choices), count, q)
 	jack := newReplicates(len(choices), len(deleted), q)
 	total := count + len(deleted)
@@ -279,14 +315,22 @@ func (c *Comparison) resample(ctx context.Context, red *reduction.Reduction, cho
 				weights = append(weights, deleted[b-count])
 			}
 		}
+		apart := map[int][]*parts{}
+		for i, s := range own {
+			apart[i] = s.weighted(weights)
+		}
 		for i, p := range source.weighted(weights) {
 			if ctx.Err() != nil {
 				return
 			}
+			t := map[int]remedy.Training{}
+			for j, list := range apart {
+				t[j] = list[i].whole()
+			}
 			if b := k*batch + i; b < count {
-				drawn.learn(choices, p.whole(), b)
+				drawn.learn(choices, p.whole(), t, b)
 			} else {
-				jack.learn(choices, p.whole(), b-count)
+				jack.learn(choices, p.whole(), t, b-count)
 			}
 		}
 		if opt.Progress != nil {

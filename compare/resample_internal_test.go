@@ -167,13 +167,13 @@ func TestSourcesAgree(t *testing.T) {
 	}
 	got, want := newReplicates(len(choices), 20, 5), newReplicates(len(choices), 20, 5)
 	for b, p := range light.weighted(weights) {
-		got.learn(choices, p.whole(), b)
+		got.learn(choices, p.whole(), nil, b)
 	}
 	heavy := *light
 	heavy.light = nil
 	heavy.heavy = weighted(red, cols, unit, of, c.Plan.Counts[0])
 	for b, p := range heavy.weighted(weights) {
-		want.learn(choices, p.whole(), b)
+		want.learn(choices, p.whole(), nil, b)
 	}
 	for i, ch := range choices {
 		for k, v := range want.values[i] {
@@ -228,7 +228,7 @@ func TestCopiesStayTogether(t *testing.T) {
 					unit = append(unit, int32(i))
 				}
 			}
-			again := picked(cols, unit)
+			again := rowsOf(cols, unit)
 			p, err := folds.NewRandom(60, 5, 1, int64(b), false)
 			if err != nil {
 				t.Fatal(err)
@@ -403,8 +403,8 @@ func weighted(red *reduction.Reduction, cols []reduction.Column, unit, of []int3
 	return func(w []float64) *reduction.Reduction { return red.Weighted(cols, unit, of, folds, w) }
 }
 
-// picked takes rows in the order named.
-func picked(cols []reduction.Column, rows []int32) []reduction.Column {
+// rowsOf takes rows in the order named.
+func rowsOf(cols []reduction.Column, rows []int32) []reduction.Column {
 	out := make([]reduction.Column, len(cols))
 	for j := range out {
 		for _, i := range rows {

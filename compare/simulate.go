@@ -325,6 +325,9 @@ func (c *Comparison) watch(truths []Truth) []*watched {
 	}
 	var out []*watched
 	for i, a := range c.Alternatives {
+		if a.own != nil { // another question, about rows that the truths do not speak of
+			continue
+		}
 		put := func(list []Coefficient, names []string) {
 			for _, k := range list {
 				if !slices.Contains(names, k.Name) || k.weights == nil {

@@ -140,7 +140,11 @@ func TestEveryRemedyConforms(t *testing.T) {
 
 // asked fills in what remedies offer only on request.
 func asked(p *remedy.Problem) {
-	p.Settings.Columns = map[string][]int{"residualize.of": {0}, "residualize.on": {1}}
+	p.Settings.Columns = map[string][]int{"residualize.of": {0}, "residualize.on": {1}, "ratio.by": {4}}
+	p.Order, p.Time = asWritten(60), make([]float64, 60)
+	for i := range p.Time {
+		p.Time[i] = float64(i)
+	}
 }
 
 func conform(t *testing.T, p *remedy.Problem, tr remedy.Training, red *reduction.Reduction, v remedy.Variant) {

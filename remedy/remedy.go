@@ -72,6 +72,10 @@ type Problem struct {
 	Settings  Settings
 	Sample    *linear.Sample
 	Penalties []float64 // the grid of ridge penalties, from 0 upwards, the same in every fold
+	// Order lists the rows used in time order, where the study declares time and no two rows share a period; Time has the period of each row, NaN where
+	// time is text.
+	Order []int
+	Time  []float64
 	// Rows calls yield with the regressors of each row in turn (the slice is reused) and y.
 	Rows func(yield func(x []float64, y float64))
 }
@@ -99,10 +103,24 @@ type Variant struct {
 	// OwnVariance: standard errors use this fit's own residual variance and degrees of freedom (it is least squares on a
 	// smaller design); otherwise those of the model left alone.
 	OwnVariance bool
+	// Rows are what the variant is learned on instead of the design: another question, whose forecasts are scored on the dependent variable itself.
+	Rows *Rows
 	// Learn fits the variant on the training rows alone; tuning uses Training.Inner.
 	Learn func(Training) *Fitted
 	// Describe says what the fit on all rows imposes, costs and means.
 	Describe func(*Final) Description
+}
+
+// Rows holds one transformed row for each row used, in file order: p columns, the dependent variable, and what is skipped because it has no
+// transformed row.
+type Rows struct {
+	X    [][]float64
+	Y    []float64
+	Skip []bool
+	// A forecast is scored by the squared distance of ScoredY to Unit * constant + sum ScoredX_j slope_j. Nil: ones, Y and X.
+	Unit    []float64
+	ScoredX [][]float64
+	ScoredY []float64
 }
 
 // NotApplicable says why a remedy, or one variant of it, is not offered.
@@ -195,6 +213,7 @@ type Component struct {
 // Final is what Describe sees.
 type Final struct {
 	Problem *Problem
+	Sample  *linear.Sample // of Variant.Rows; else nil
 	Fitted  *Fitted
 	RSS     float64 // of this fit on all rows
 	AsIs    *linear.Fit

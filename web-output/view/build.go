@@ -242,7 +242,7 @@ func buildCoefficient(c compare.Coefficient) Coefficient {
 
 func buildAlternative(c *compare.Comparison, a *compare.Alternative) Alternative {
 	out := Alternative{Key: a.Key, Remedy: a.Remedy.Key, Label: a.Variant.Label, Summary: a.Variant.Summary, Coefficients: []Coefficient{}, Derived: []Coefficient{},
-		Covariance: [][]Num{}, ResidualSD: Num(a.S), FitRMSE: Num(math.Sqrt(a.RSS / float64(c.Design.Rows))), R2: Num(a.R2), DegreesOfFreedom: Num(a.DF),
+		Covariance: [][]Num{}, ResidualSD: Num(a.S), FitRMSE: Num(math.Sqrt(a.RSS / float64(a.Rows))), R2: Num(a.R2), DegreesOfFreedom: Num(a.DF),
 		StandardErrorKind: c.ErrorKinds[0].Name, Tests: []Test{}, Meaning: []Meaning{}, Costs: []string{}, Notes: []Note{}, Removes: []string{}, Weights: []NamedValue{}, Simulation: []Simulation{}}
 	for _, k := range a.Coefficients {
 		out.Coefficients = append(out.Coefficients, buildCoefficient(k))
