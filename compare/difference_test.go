@@ -35,15 +35,7 @@ func TestDifferences(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	var a *compare.Alternative
-	for _, v := range c.Alternatives {
-		if v.Key == "difference" {
-			a = v
-		}
-	}
-	if a == nil {
-		t.Fatalf("no difference: %v", c.NotApplicable)
-	}
+	a := find(t, c, "difference")
 	// By hand: differences of neighbouring years.
 	type change struct {
 		now int // place in shuffled
@@ -135,15 +127,7 @@ func TestRatio(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	var v *compare.Alternative
-	for _, a := range c.Alternatives {
-		if a.Key == "ratio:size" {
-			v = a
-		}
-	}
-	if v == nil {
-		t.Fatalf("no ratio: %v", c.NotApplicable)
-	}
+	v := find(t, c, "ratio:size")
 	divided := func(keep func(i int) bool, extra bool) rows {
 		out := rows{}
 		for i, r := range cells {

@@ -169,21 +169,17 @@ func (p *studyParser) key(key, value *yaml.Node) error {
 			}
 			s.Seed = int64(v)
 		}
-	case "resamples":
+	case "resamples", "simulations":
 		var v float64
-		if v, err = p.number(value, "resamples"); err == nil {
+		if v, err = p.number(value, key.Value); err == nil {
 			if bad := checkResamples(v); bad != "" {
-				return p.fail(value, "resamples: %s", bad)
+				return p.fail(value, "%s: %s", key.Value, bad)
 			}
-			s.Resamples = int(v)
-		}
-	case "simulations":
-		var v float64
-		if v, err = p.number(value, "simulations"); err == nil {
-			if bad := checkResamples(v); bad != "" {
-				return p.fail(value, "simulations: %s", bad)
+			if key.Value == "resamples" {
+				s.Resamples = int(v)
+			} else {
+				s.Simulations = int(v)
 			}
-			s.Simulations = int(v)
 		}
 	case "cutoffs":
 		err = p.mapping(value, "cutoffs", func(k, v *yaml.Node) error {
