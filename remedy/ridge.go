@@ -104,10 +104,7 @@ func (r ridgeFit) learn(t Training) *Fitted {
 	if at < 0 || t.Final {
 		tuning.MSE, tuning.MSESD = tune(t.Inner, len(values), func(s Split) []float64 {
 			sp := s.Train.Spectrum(r.spare)
-			if len(r.spare) == 0 {
-				return s.Held.PathSSE(sp, len(values), func(i, k int) float64 { return sp.Sigma[k] / (sp.Sigma[k]*sp.Sigma[k] + values[i]) })
-			}
-			return oneByOne(s, len(values), func(i int) []float64 { return sp.RidgeSlopes(values[i]) })
+			return s.Held.PathSSE(sp, len(values), func(i, k int) float64 { return sp.Sigma[k] / (sp.Sigma[k]*sp.Sigma[k] + values[i]) })
 		})
 	}
 	tuning.Chosen = at

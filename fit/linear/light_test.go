@@ -130,6 +130,15 @@ func TestLightAgrees(t *testing.T) {
 		spare := []int{p - 1}
 		ssp, lssp := train.Spectrum(spare), lt.Spectrum(spare)
 		same("ridge with a spared slope", lssp.RidgeSlopes(0.2), ssp.RidgeSlopes(0.2))
+		for which, pair := range map[string]struct {
+			h  *HeldOut
+			sp *Spectrum
+		}{"light": {lh, lssp}, "exact": {held, ssp}} {
+			got := pair.h.PathSSE(pair.sp, len(penalties), func(i, k int) float64 { return pair.sp.Sigma[k] / (pair.sp.Sigma[k]*pair.sp.Sigma[k] + penalties[i]) })
+			for i, k := range penalties {
+				near(t, name+" spared path, "+which, got[i], held.SSE(ssp.RidgeSlopes(k)), 1e-9)
+			}
+		}
 		near(t, name+" spared degrees", lssp.RidgeDegrees(0.2), ssp.RidgeDegrees(0.2), 1e-10)
 		without, inverse, ok := lt.Without([]int{0}, true)
 		if !ok {

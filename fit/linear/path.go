@@ -1,13 +1,16 @@
 package linear
 
 import (
+	"math"
+	"sync"
+
 	"gonum.org/v1/gonum/blas/blas64"
 	"gonum.org/v1/gonum/mat"
 )
 
 // PathSSE returns the sums of squared prediction errors on the held-out rows of count fits that differ only in how they weigh the directions of
-// the spectrum: fit i has the coefficient weight(i, k) * UZ[k] on direction k (1/Sigma[k] is least squares). sp must be the spectrum, without
-// spared regressors, of the training sample that h is centred on.
+// the spectrum: fit i has the coefficient weight(i, k) * UZ[k] on direction k (1/Sigma[k] is least squares). sp must be the spectrum of the
+// training sample that h is centred on.
 //
 // It works on residuals of the least-squares fit, taken in double-double: with d the distance from it along the directions,
 //
@@ -23,8 +26,12 @@ func (h *HeldOut) PathSSE(sp *Spectrum, count int, weight func(i, k int) float64
 		out[i] = al.ee
 	}
 	// Direction by direction, all fits at once; d holds the distances of the directions so far.
-	d := make([]float64, r*count)
-	sum := make([]float64, count)
+	scratch := paths.Get().(*[]float64)
+	defer paths.Put(scratch)
+	if need := (r + 1) * count; cap(*scratch) < need {
+		*scratch = make([]float64, need)
+	}
+	d, sum := (*scratch)[:r*count], (*scratch)[r*count:(r+1)*count]
 	for k := range r {
 		row := d[k*count : (k+1)*count]
 		least := 1 / sp.Sigma[k]
@@ -53,6 +60,9 @@ func (h *HeldOut) PathSSE(sp *Spectrum, count int, weight func(i, k int) float64
 	return out
 }
 
+// paths holds the scratch of PathSSE, which is called so often that its garbage would count.
+var paths = sync.Pool{New: func() any { return new([]float64) }}
+
 // axpy adds a*x to y.
 func axpy(a float64, x, y []float64) {
 	blas64.Axpy(a, blas64.Vector{N: len(x), Data: x, Inc: 1}, blas64.Vector{N: len(y), Data: y, Inc: 1})
@@ -75,21 +85,76 @@ func (h *HeldOut) alongOf(sp *Spectrum) *along {
 	base := sp.ComponentSlopes(sp.Rank)
 	a := &along{of: sp, ee: h.SSE(base)}
 	if sp.Rank > 0 {
-		a.ze = h.residualMoments(sp, base)
-		a.zz = h.turned(sp)
+		t := sp.directions()
+		a.ze = h.residualMoments(t, base)
+		a.zz = h.turned(t, sp.Sigma[sp.Rank-1])
 	}
 	h.along = a
 	return a
 }
 
-// residualMoments returns Z'e for the residuals of the slopes, Z the held-out rows along the directions.
-func (h *HeldOut) residualMoments(sp *Spectrum, slopes []float64) []float64 {
-	p, r := h.P, sp.Rank
-	out := make([]float64, r)
+// directions returns the slopes, in the user's units, that a unit step along each direction of the spectrum makes, p x rank: the spared regressors, if
+// any, give way as least squares of the training rows has it.
+func (sp *Spectrum) directions() []float64 {
+	r := sp.Rank
+	out := make([]float64, sp.p*r)
 	for i, col := range sp.Cols {
-		if sp.scale[col] == 0 {
-			continue
+		copy(out[col*r:(col+1)*r], sp.V[i*r:(i+1)*r])
+	}
+	if len(sp.spare) > 0 {
+		std := make([]float64, sp.p)
+		for k := range r {
+			for j := range std {
+				std[j] = out[j*r+k]
+			}
+			sp.giveWay(std)
+			for j, v := range std {
+				out[j*r+k] = v
+			}
 		}
+	}
+	for j := range sp.p {
+		row := out[j*r : (j+1)*r]
+		f := 0.0
+		if sp.scale[j] > 0 {
+			f = 1 / sp.scale[j]
+		}
+		for k := range row {
+			row[k] *= f
+		}
+	}
+	return out
+}
+
+// giveWay fills in the spared slopes (unit-length columns) that go with a step in the others.
+func (sp *Spectrum) giveWay(std []float64) {
+	if sp.f != nil {
+		exact := numbers(std)
+		z := sp.z
+		sp.z = make([]number, len(z))
+		sp.backToSpared(exact, len(sp.Cols))
+		sp.z = z
+		copy(std, floats(exact))
+		return
+	}
+	for k := len(sp.swept) - 1; k >= 0; k-- {
+		s := sp.swept[k]
+		v := 0.0
+		for j, x := range s.row {
+			if j != s.col {
+				v -= x * std[j]
+			}
+		}
+		std[s.col] = v / s.row[s.col]
+	}
+}
+
+// residualMoments returns Z'e for the residuals of the slopes, Z the held-out rows along the directions t.
+func (h *HeldOut) residualMoments(t []float64, slopes []float64) []float64 {
+	p := h.P
+	r := len(t) / max(1, p)
+	out := make([]float64, r)
+	for col := range p {
 		var x float64
 		if l := h.light; l != nil {
 			x = l.r[col]
@@ -105,9 +170,8 @@ func (h *HeldOut) residualMoments(sp *Spectrum, slopes []float64) []float64 {
 			}
 			x = v.Float()
 		}
-		x /= sp.scale[col]
-		for k := range r {
-			out[k] += sp.V[i*r+k] * x
+		for k, w := range t[col*r : (col+1)*r] {
+			out[k] += w * x
 		}
 	}
 	return out
@@ -116,42 +180,40 @@ func (h *HeldOut) residualMoments(sp *Spectrum, slopes []float64) []float64 {
 // thin is the eigenvalue below which float64 would lose digits that the error curve needs.
 const thin = 1e-5
 
-// turned returns Z'Z along the directions, r x r.
-func (h *HeldOut) turned(sp *Spectrum) []float64 {
-	m, r := len(sp.Cols), sp.Rank
-	if least := sp.Sigma[r-1]; h.light == nil && least*least < thin {
-		return h.turnedExactly(sp)
+// turned returns Z'Z along the directions t, r x r.
+func (h *HeldOut) turned(t []float64, least float64) []float64 {
+	p := h.P
+	r := len(t) / p
+	if h.light == nil && least*least < thin {
+		return floats((&Sample{P: p, S: h.s, R: h.r, Mean: make([]number, p)}).Transform(t, r).S)
 	}
-	s := mat.NewDense(m, m, nil)
-	to := s.RawMatrix().Data
-	for i, a := range sp.Cols {
-		for j, b := range sp.Cols {
-			if d := sp.scale[a] * sp.scale[b]; d > 0 {
-				if h.light != nil {
-					to[i*m+j] = h.light.s[a*h.P+b] / d
-				} else {
-					to[i*m+j] = h.s[a*h.P+b].Float() / d
-				}
-			}
+	// Columns in units of their own length, so that products are of one size.
+	scale, scaled := make([]float64, p), make([]float64, p*r)
+	s := make([]float64, p*p)
+	at := func(i, j int) float64 {
+		if h.light != nil {
+			return h.light.s[i*p+j]
 		}
+		return h.s[i*p+j].Float()
 	}
-	v := mat.NewDense(m, r, sp.V)
-	var sv, out mat.Dense
-	sv.Mul(s, v)
-	out.Mul(v.T(), &sv)
-	return out.RawMatrix().Data
-}
-
-func (h *HeldOut) turnedExactly(sp *Spectrum) []float64 {
-	r := sp.Rank
-	basis := make([]float64, h.P*r)
-	for i, col := range sp.Cols {
-		if sp.scale[col] == 0 {
-			continue
+	for j := range p {
+		if d := at(j, j); d > 0 {
+			scale[j] = math.Sqrt(d)
+		} else {
+			scale[j] = 1
 		}
 		for k := range r {
-			basis[col*r+k] = sp.V[i*r+k] / sp.scale[col]
+			scaled[j*r+k] = t[j*r+k] * scale[j]
 		}
 	}
-	return floats((&Sample{P: h.P, S: h.s, R: h.r, Mean: make([]number, h.P)}).Transform(basis, r).S)
+	for i := range p {
+		for j := range p {
+			s[i*p+j] = at(i, j) / scale[i] / scale[j]
+		}
+	}
+	v := mat.NewDense(p, r, scaled)
+	var sv, out mat.Dense
+	sv.Mul(mat.NewDense(p, p, s), v)
+	out.Mul(v.T(), &sv)
+	return out.RawMatrix().Data
 }
