@@ -247,6 +247,10 @@ func (c *Comparison) problem(sample *linear.Sample) error {
 	c.Problem = pr
 	pr.Smallest = c.Smallest
 	c.Focal, c.FocalDeclared = focal, len(focal) > 0
+	if k := 1; d.Constant && p+k >= d.Rows {
+		c.Notes = append(c.Notes, design.Note{Code: "few-rows", Text: fmt.Sprintf("%d coefficients and %d rows: least squares fits every row, or has no answer of its own, so that as-is, drops and indexes have no residual variance; "+
+			"ridge and components can still predict, and no standard error given the tuning can be stated", p+k, d.Rows)})
+	}
 	if !c.FocalDeclared {
 		c.Focal = []int{c.mostTangled()}
 		c.Notes = append(c.Notes, design.Note{Code: "no-focal", Text: fmt.Sprintf("no coefficient of interest was named; the verdict speaks of %s, the most entangled one: name yours with focal", d.Regressors[c.Focal[0]].Name)})
@@ -276,6 +280,9 @@ func (c *Comparison) mostTangled() int {
 	}
 	return best
 }
+
+// mostProposed bounds the groups that are proposed from tangles.
+const mostProposed = 6
 
 // groups are the user's, then those proposed from substantive tangles: never with a focal or kept regressor, a dummy, or a
 // variable that enters powers or products.
@@ -310,9 +317,13 @@ func (c *Comparison) groups(focal, keep []int) ([]remedy.Group, error) {
 		}
 		out = append(out, remedy.Group{Name: g.Name, Columns: cols, ByUser: true, Weights: g.Weights})
 	}
+	proposed := 0
 	for _, dep := range c.Diagnosis.Dependencies {
 		if dep.Kind != collinear.Substantive && dep.Kind != collinear.Exact {
 			continue
+		}
+		if len(d.Regressors) >= d.Rows || proposed == mostProposed {
+			break // with as many regressors as rows everything depends on everything
 		}
 		var cols []int
 		for _, j := range dep.Members() {
@@ -329,6 +340,7 @@ func (c *Comparison) groups(focal, keep []int) ([]remedy.Group, error) {
 			names = append(names, d.Regressors[j].Name)
 		}
 		out = append(out, remedy.Group{Name: strings.Join(names, "+"), Columns: cols})
+		proposed++
 	}
 	return out, nil
 }

@@ -75,16 +75,20 @@ func tangleSentence(c *compare.Comparison) string {
 	for _, d := range c.Diagnosis.Dependencies {
 		switch d.Kind {
 		case collinear.Exact:
-			exact = append(exact, d.Equation)
+			exact = append(exact, relation(c, d, "depends exactly on"))
 		case collinear.Substantive:
-			substantive = append(substantive, d.Equation)
+			substantive = append(substantive, relation(c, d, "moves with"))
 		case collinear.Structural:
 			structural = append(structural, c.Problem.Names[d.Left])
 		}
 	}
 	switch {
 	case len(exact) > 0:
-		return "An exact dependency leaves coefficients without a value: " + strings.Join(exact, "; ") + ". Remove one of its members, merge them, or state a restriction."
+		more := ""
+		if len(exact) > 3 {
+			more = fmt.Sprintf("; and %d more", len(exact)-3)
+		}
+		return "An exact dependency leaves coefficients without a value: " + strings.Join(first(exact, 3), "; ") + more + ". Remove one of its members, merge them, or state a restriction."
 	case len(substantive) > 0:
 		s := "Two or more real quantities move together: " + strings.Join(first(substantive, 3), "; ") + "."
 		if len(substantive) > 3 {
@@ -97,6 +101,14 @@ func tangleSentence(c *compare.Comparison) string {
 		return "What is tangled comes from powers, products or dummies alone (" + strings.Join(first(structural, 3), ", ") + "): a matter of where variables count from, and no cause for a remedy."
 	}
 	return "No regressors are tangled beyond the usual marks."
+}
+
+// relation is the equation of a dependency, or where it is long how many take part.
+func relation(c *compare.Comparison, d collinear.Dependency, verb string) string {
+	if len(d.Columns) <= 5 {
+		return d.Equation
+	}
+	return fmt.Sprintf("%s %s %d other regressors", c.Problem.Names[d.Left], verb, len(d.Columns))
 }
 
 func first(s []string, n int) []string {
