@@ -56,7 +56,7 @@ var truthLabels = map[string]string{"as-estimated": "as estimated", "focal-zero"
 // shareAxis runs from no sample to all of them; the nominal share is marked in place of the whole.
 func shareAxis() axis {
 	a := axis{Low: 0, High: 1}
-	for _, v := range []float64{0, 0.25, 0.5, 0.75, nominal} {
+	for _, v := range []float64{0, 0.5, nominal} {
 		a.Ticks = append(a.Ticks, tick{a.at(v), strconv.FormatFloat(100*v, 'f', -1, 64) + "\u00a0%"})
 	}
 	return a

@@ -232,7 +232,7 @@ func truthSentence(r *Results) string {
 	if best == 0 || float64(base.RMSE-nearest.RMSE) < 2*math.Hypot(float64(base.RMSEError), float64(nearest.RMSEError)) {
 		text += fmt.Sprintf("no alternative comes clearly closer to %s than the model left alone, whose root mean squared error is %s", Of(base.Coefficient), Short(float64(base.RMSE)))
 	} else {
-		text += fmt.Sprintf("%s comes closest to %s: its root mean squared error is %s, against %s for the model left alone", label, Of(base.Coefficient), Short(float64(nearest.RMSE)), Short(float64(base.RMSE)))
+		text += fmt.Sprintf("%s comes closest to %s, with a root mean squared error of %s against %s for the model left alone", label, Of(base.Coefficient), Short(float64(nearest.RMSE)), Short(float64(base.RMSE)))
 		if c := nearest; !c.Coverage.IsNone() && float64(c.Coverage)+2*float64(c.CoverageError) < lowCoverage {
 			text += fmt.Sprintf(", but its 95 %% interval holds the truth in only %s of the samples", wholePercent(c.Coverage))
 		}
@@ -241,15 +241,15 @@ func truthSentence(r *Results) string {
 	case judged == 0:
 		return text + "."
 	case len(low) == 0:
-		return text + "; no 95 % interval holds it in clearly under 90 % of the samples."
+		return text + ". No nominal 95 % interval holds it in clearly under 90 % of the samples."
 	case len(decided) > 0:
-		which := "the drop that the data decide among them"
+		which := "the drop"
 		if len(decided) > 1 {
-			which = "the drops that the data decide among them"
+			which = "the drops"
 		}
-		return text + fmt.Sprintf("; under %d of %d alternatives a 95 %% interval holds it in clearly under 90 %% of the samples, %s (%s).", len(low), judged, which, strings.Join(first(decided, 3), "; "))
+		return text + fmt.Sprintf(". Of %d nominal 95 %% intervals %d hold it in clearly under 90 %% of the samples, among them %s that the data decide (%s).", judged, len(low), which, strings.Join(first(decided, 3), "; "))
 	}
-	return text + fmt.Sprintf("; under %d of %d alternatives a 95 %% interval holds it in clearly under 90 %% of the samples, least often under %s (%s).", len(low), judged, leastLabel, wholePercent(Num(least)))
+	return text + fmt.Sprintf(". Of %d nominal 95 %% intervals %d hold it in clearly under 90 %% of the samples, least often that of %s (%s).", judged, len(low), leastLabel, wholePercent(Num(least)))
 }
 
 func wholePercent(share Num) string {
@@ -259,7 +259,9 @@ func wholePercent(share Num) string {
 // FoldSentence says how rows were held out.
 func FoldSentence(f Folds) string {
 	times := "once"
-	if f.Repeats > 1 {
+	if f.Repeats == 2 {
+		times = "twice"
+	} else if f.Repeats > 2 {
 		times = fmt.Sprintf("%d times over", f.Repeats)
 	}
 	switch f.Kind {

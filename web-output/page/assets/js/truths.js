@@ -31,6 +31,14 @@ export function of(name) {
   return name.startsWith("effect of ") ? "the " + name : "the coefficient of " + name;
 }
 
+// drawn places a row's coverage and two Monte Carlo errors either way, in per cent of the width; null where there is none.
+export function drawn(row) {
+  if (row.coverage === null) return null;
+  const e = 2 * row.coverageError;
+  const from = at(shares, Math.max(0, row.coverage - e)), to = at(shares, Math.min(1, row.coverage + e));
+  return { x: at(shares, row.coverage), from, width: Math.round((to - from) * 100) / 100 };
+}
+
 // drawCoverage fills an svg: the axis, the share promised, what is missing, the dot with its Monte Carlo error.
 function drawCoverage(svg, row) {
   const parts = [];
@@ -38,13 +46,11 @@ function drawCoverage(svg, row) {
   const promised = at(shares, nominal);
   line("zero", 2, 98, 21.5, 21.5);
   line("nominal", promised, promised, 0, 22);
-  if (row.coverage !== null) {
-    const x = at(shares, row.coverage), e = 2 * row.coverageError;
-    const from = at(shares, Math.max(0, row.coverage - e)), to = at(shares, Math.min(1, row.coverage + e));
-    line("short", x, promised, 11, 11);
-    const width = Math.round((to - from) * 100) / 100;
-    if (width) parts.push(node("rect", [["class", "bar"], ["x", from + "%"], ["y", 9.5], ["width", width + "%"], ["height", 3]]));
-    parts.push(node("circle", [["class", row.hollow ? "hollow" : "dot"], ["cx", x + "%"], ["cy", 11], ["r", 5]]));
+  const d = drawn(row);
+  if (d) {
+    line("short", d.x, promised, 11, 11);
+    if (d.width) parts.push(node("rect", [["class", "bar"], ["x", d.from + "%"], ["y", 9.5], ["width", d.width + "%"], ["height", 3]]));
+    parts.push(node("circle", [["class", row.hollow ? "hollow" : "dot"], ["cx", d.x + "%"], ["cy", 11], ["r", 5]]));
   }
   svg.replaceChildren(...parts);
 }
