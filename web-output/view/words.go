@@ -242,14 +242,20 @@ func truthSentence(r *Results) string {
 		return text + "."
 	case len(low) == 0:
 		return text + ". No nominal 95 % interval holds it in clearly under 90 % of the samples."
-	case len(decided) > 0:
+	}
+	hold := "hold"
+	if len(low) == 1 {
+		hold = "holds"
+	}
+	text += fmt.Sprintf(". Of %d nominal 95 %% intervals %d %s it in clearly under 90 %% of the samples, ", judged, len(low), hold)
+	if len(decided) > 0 {
 		which := "the drop"
 		if len(decided) > 1 {
 			which = "the drops"
 		}
-		return text + fmt.Sprintf(". Of %d nominal 95 %% intervals %d hold it in clearly under 90 %% of the samples, among them %s that the data decide (%s).", judged, len(low), which, strings.Join(first(decided, 3), "; "))
+		return text + fmt.Sprintf("among them %s that the data decide (%s).", which, strings.Join(first(decided, 3), "; "))
 	}
-	return text + fmt.Sprintf(". Of %d nominal 95 %% intervals %d hold it in clearly under 90 %% of the samples, least often that of %s (%s).", judged, len(low), leastLabel, wholePercent(Num(least)))
+	return text + fmt.Sprintf("least often that of %s (%s).", leastLabel, wholePercent(Num(least)))
 }
 
 func wholePercent(share Num) string {
