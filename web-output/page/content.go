@@ -574,6 +574,7 @@ var functions = template.FuncMap{
 	"stop":     func(s string) string { return strings.TrimSuffix(s, ".") + "." },
 	"lead":     func(s string) string { before, _, _ := strings.Cut(s, " ("); return before },
 	"after":    func(s string) string { return strings.TrimPrefix(s, strings.SplitN(s, " (", 2)[0]) },
+	"percents": func(s string) string { return strings.ReplaceAll(s, " %", "\u00a0%") },
 	"folds":    view.FoldSentence,
 	"of":       view.Of,
 	"tenth":    tenth,

@@ -51,7 +51,7 @@ type coverageMark struct {
 }
 
 // truthLabels are short names of the truths, for a choice.
-var truthLabels = map[string]string{"as-estimated": "as estimated", "focal-zero": "no effect of interest", "focal-smallest": "the smallest effect of interest", "halfway": "half of what is estimated"}
+var truthLabels = map[string]string{"as-estimated": "as estimated", "focal-zero": "coefficient of interest zero", "focal-smallest": "the smallest effect of interest", "halfway": "half of what is estimated"}
 
 // shareAxis runs from no sample to all of them; the nominal share is marked in place of the whole.
 func shareAxis() axis {

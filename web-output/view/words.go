@@ -234,7 +234,7 @@ func truthSentence(r *Results) string {
 	} else {
 		text += fmt.Sprintf("%s comes closest to %s, with a root mean squared error of %s against %s for the model left alone", label, Of(base.Coefficient), Short(float64(nearest.RMSE)), Short(float64(base.RMSE)))
 		if c := nearest; !c.Coverage.IsNone() && float64(c.Coverage)+2*float64(c.CoverageError) < lowCoverage {
-			text += fmt.Sprintf(", but its 95 %% interval holds the truth in only %s of the samples", wholePercent(c.Coverage))
+			text += fmt.Sprintf(", but its 95 %% interval holds the truth in %s of the samples", only(c.Coverage))
 		}
 	}
 	switch {
@@ -256,6 +256,13 @@ func truthSentence(r *Results) string {
 		return text + fmt.Sprintf("among them %s that the data decide (%s).", which, strings.Join(first(decided, 3), "; "))
 	}
 	return text + fmt.Sprintf("least often that of %s (%s).", leastLabel, wholePercent(Num(least)))
+}
+
+func only(share Num) string {
+	if share == 0 {
+		return "none"
+	}
+	return "only " + wholePercent(share)
 }
 
 func wholePercent(share Num) string {

@@ -21,6 +21,9 @@ func TestTruthSentence(t *testing.T) {
 			"If the truth is what was estimated, no alternative comes clearly closer to the coefficient of x than the model left alone, whose root mean squared error is 1. No nominal 95 % interval holds it in clearly under 90 % of the samples."},
 		{"another is worst", []Alternative{alone, one("Drop z", "drop", "estimated", 2, 0, 0)},
 			"If the truth is what was estimated, no alternative comes clearly closer to the coefficient of x than the model left alone, whose root mean squared error is 1. Of 2 nominal 95 % intervals 1 holds it in clearly under 90 % of the samples, least often that of Drop z (0 %)."},
+		{"the closest never covers", []Alternative{alone, one("Drop z", "drop", "estimated", 0.5, 0, 0)},
+			"If the truth is what was estimated, Drop z comes closest to the coefficient of x, with a root mean squared error of 0.5 against 1 for the model left alone, but its 95 % interval holds the truth in none of the samples. " +
+				"Of 2 nominal 95 % intervals 1 holds it in clearly under 90 % of the samples, least often that of Drop z (0 %)."},
 		{"nothing simulated", []Alternative{{}}, ""},
 	} {
 		if got := truthSentence(&Results{Simulations: Simulations{Count: 99}, Alternatives: c.list}); got != c.want {

@@ -79,7 +79,7 @@ export function mountTruths(page) {
     for (const r of radios) r.checked = Number(r.value) === page.state.truth;
     const value = truthRow(alternatives[0], truth.name, name).true;
     sentence.textContent = `${whole(truth.text)} Then ${of(name)} is in truth ${figure(value, 3)}.`;
-    part("truth-name").textContent = name;
+    part("truth-name").textContent = of(name);
     for (const tr of rows) {
       const row = truthRow(alternatives[Number(tr.dataset.truth)], truth.name, name);
       const field = (f) => tr.querySelector(`[data-f="${f}"]`);
