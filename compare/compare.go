@@ -110,7 +110,11 @@ func prepare(ctx context.Context, t *dataset.Table, study *Study, opt Options, f
 	if err != nil {
 		return nil, nil, err
 	}
-	c.Notes = append(c.Notes, c.Design.Notes...)
+	for _, n := range c.Design.Notes {
+		if n.Code != "folds-ignore-time" || study.Time == "" {
+			c.Notes = append(c.Notes, n)
+		}
+	}
 	for j := range c.Design.Regressors {
 		n := float64(red.Total.N)
 		c.Means = append(c.Means, red.Total.Sum(j).Add(red.Origin[j].MulFloat(n)).Float()/n)

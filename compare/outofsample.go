@@ -8,6 +8,7 @@ import (
 	"sync"
 
 	"modelmend/fit/design"
+	"modelmend/fit/figures"
 	"modelmend/fit/folds"
 	"modelmend/fit/tail"
 	"modelmend/remedy"
@@ -74,7 +75,7 @@ func (c *Comparison) measureLeak(ctx context.Context, choices []choice, light bo
 	}
 	a := c.Alternatives[0]
 	c.Leak = &Leak{kind, fmt.Sprintf("folds of kind %s put %s on both sides of a split, so that what they share leaks into the training rows: the out-of-sample error of the model left alone is %s with them and %s with %s",
-		c.Plan.Kind, what, brief(a.Out.RMSE), brief(a.OutApart.RMSE), map[string]string{"clusters": "whole clusters held out", "blocks": "contiguous blocks of time held out", "rolling": "later periods predicted from earlier ones"}[kind])}
+		c.Plan.Kind, what, figures.Fixed(a.Out.RMSE, 4), figures.Fixed(a.OutApart.RMSE, 4), map[string]string{"clusters": "whole clusters held out", "blocks": "contiguous blocks of time held out", "rolling": "later periods predicted from earlier ones"}[kind])}
 	c.Notes = append(c.Notes, design.Note{Code: "folds-leak", Text: c.Leak.Text})
 	return nil
 }

@@ -390,13 +390,14 @@ func spread(c *Coefficient, values, deleted []float64) *Resampled {
 	slices.Sort(v)
 	n := float64(len(v))
 	mean, below := 0.0, 0.0
+	negative, positive := 0, 0
 	for _, x := range v {
 		mean += x / n
 		switch {
 		case x < 0:
-			r.Negative += 1 / n
+			negative++
 		case x > 0:
-			r.Positive += 1 / n
+			positive++
 		}
 		switch {
 		case x < c.Estimate:
@@ -405,6 +406,7 @@ func spread(c *Coefficient, values, deleted []float64) *Resampled {
 			below += 0.5
 		}
 	}
+	r.Negative, r.Positive = float64(negative)/n, float64(positive)/n
 	ss := 0.0
 	for _, x := range v {
 		ss += (x - mean) * (x - mean)
@@ -496,8 +498,11 @@ func tuned(values, chosen []float64) *TuningResampled {
 	slices.Sort(sorted)
 	for _, v := range sorted {
 		if i := slices.Index(values, v); i >= 0 {
-			t.Shares[i] += 1 / float64(len(sorted))
+			t.Shares[i]++
 		}
+	}
+	for i := range t.Shares {
+		t.Shares[i] /= float64(len(sorted))
 	}
 	t.Low, t.Median, t.High = quantile(sorted, 0.025), quantile(sorted, 0.5), quantile(sorted, 0.975)
 	return t

@@ -39,12 +39,31 @@ func TestAcceleratedInterval(t *testing.T) {
 			t.Errorf("%s: got %.12g, want %.12g", c.name, c.got, c.want)
 		}
 	}
-	if r.Used != 999 || r.Positive < 0.999999 || r.Negative != 0 {
+	if r.Used != 999 || r.Positive != 1 || r.Negative != 0 {
 		t.Errorf("used %d, positive %g, negative %g", r.Used, r.Positive, r.Negative)
 	}
 	far := spread(&Coefficient{Estimate: -5}, values, deleted)
 	if !math.IsNaN(far.AccLow) || math.IsNaN(far.Low) {
 		t.Errorf("an estimate outside all resamples has no accelerated interval; got %g", far.AccLow)
+	}
+}
+
+// TestSharesAreCounted: a share is a count over a count; what holds in all of 999 is 1, and not a little less.
+func TestSharesAreCounted(t *testing.T) {
+	const n = 999
+	ones, covered := make([]float64, n), make([]bool, n)
+	for i := range ones {
+		ones[i], covered[i] = 1, true
+	}
+	if r := tuned([]float64{0, 1}, ones); r.Shares[1] != 1 || r.Shares[0] != 0 {
+		t.Errorf("shares %v", r.Shares)
+	}
+	if s := sumUp(AsEstimated, "x", -2, ones, covered); s.Coverage != 1 || s.WrongSign != 1 || s.CoverageError != 0 {
+		t.Errorf("coverage %v with error %v, wrong sign %v", s.Coverage, s.CoverageError, s.WrongSign)
+	}
+	covered[0] = false
+	if s := sumUp(AsEstimated, "x", 2, ones, covered); s.Coverage != 998./999 || s.WrongSign != 0 {
+		t.Errorf("coverage %v, wrong sign %v", s.Coverage, s.WrongSign)
 	}
 }
 

@@ -82,7 +82,7 @@ func (c *Comparison) truths() []Truth {
 	for j := range half {
 		half[j] /= 2
 	}
-	out = append(out, Truth{FocalZero, "the same, but " + and(names) + " zero", zero})
+	out = append(out, Truth{FocalZero, "as estimated, but " + and(names) + " zero", zero})
 	small := slices.Clone(b)
 	var set []string
 	for _, j := range c.Focal {
@@ -92,7 +92,7 @@ func (c *Comparison) truths() []Truth {
 		}
 	}
 	if len(set) > 0 {
-		out = append(out, Truth{FocalSmallest, "the same, but at the smallest effect of interest: " + and(set), small})
+		out = append(out, Truth{FocalSmallest, "as estimated, but at the smallest effect of interest: " + and(set), small})
 	}
 	return append(out, Truth{Halfway, "every slope is half of what is estimated", half})
 }
@@ -414,15 +414,17 @@ func sumUp(truth, name string, value float64, estimates []float64, covered []boo
 	n := float64(len(estimates))
 	s := Simulated{Truth: truth, Coefficient: name, True: value}
 	mean := 0.0
+	held, wrong := 0, 0
 	for i, e := range estimates {
 		mean += e / n
 		if covered[i] {
-			s.Coverage += 1 / n
+			held++
 		}
 		if e*value < 0 {
-			s.WrongSign += 1 / n
+			wrong++
 		}
 	}
+	s.Coverage, s.WrongSign = float64(held)/n, float64(wrong)/n
 	var m2, m4, e2, e4 float64
 	for _, e := range estimates {
 		d := e - mean

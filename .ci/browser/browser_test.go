@@ -226,8 +226,9 @@ var studies = []struct {
 }{
 	{"demo", []string{"demo"}},
 	{"wages", []string{"compare", "testdata/wages/data.csv", "--equation", wages, "--focal", "education"}},
-	{"longley", []string{"compare", "testdata/longley/data.csv", "--equation", "employed = deflator + gnp + unemployed + armed_forces + population + year", "--focal", "gnp"}},
+	{"longley", []string{"compare", "testdata/longley/data.csv", "--equation", "employed = deflator + gnp + unemployed + armed_forces + population + year", "--focal", "gnp", "--time", "year"}},
 	{"imports", []string{"compare", "testdata/french-imports/data.csv", "--equation", "import = doprod + stock + consum", "--rows", "year <= 1959", "--focal", "consum"}},
+	{"firms", []string{"compare", "testdata/petersen/data.csv", "--equation", "y = x", "--clusters", "firm,year", "--folds", "10x2", "--resamples", "199", "--simulations", "200"}},
 }
 
 // TestPagesLoadAlone: one request, no error, no policy violation; no sideways scrolling at 360 px; pictures of desktop, phone, dark and print.

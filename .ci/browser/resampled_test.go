@@ -28,7 +28,7 @@ func choose(b *tab, i int) {
 const drawings = `(doc => [...doc.querySelectorAll("table.ladder svg.ticks text, tbody.rung:not(.yours)")].map(e => {
   if (e.tagName === "text") return "tick " + parseFloat(e.getAttribute("x")) + " " + e.textContent;
   const shapes = [...e.querySelectorAll("td.axis svg.interval *")].map(s => [s.tagName, s.getAttribute("class"), s.getAttribute("d"), ...["x", "y", "x1", "x2", "y1", "y2", "cx", "cy", "width", "height"].map(a => s.hasAttribute(a) ? parseFloat(s.getAttribute(a)) : "")].join(" "));
-  const texts = ["said", "estimate", "se", "bias", "root", "meaning", "told", "prior"].map(f => f + ": " + e.querySelector('[data-f="' + f + '"]').textContent + (e.querySelector('[data-f="' + f + '"]').hidden ? " (hidden)" : ""));
+  const texts = ["said", "estimate", "se", "bias", "root", "meaning", "kinds", "told", "prior"].map(f => f + ": " + e.querySelector('[data-f="' + f + '"]').textContent + (e.querySelector('[data-f="' + f + '"]').hidden ? " (hidden)" : ""));
   return [...shapes, ...texts].join("\n");
 }))`
 
@@ -213,7 +213,7 @@ func TestCutLine(t *testing.T) {
 // TestNotResampled: with resampling off the page has one interval a rung, and says that nothing was resampled.
 func TestNotResampled(t *testing.T) {
 	b := open(t, write(t, append(imports("consum"), "--resamples", "0")...), "", 1280, 900)
-	if n := eval[int](b, `document.querySelectorAll(".again, .arrow, .legend, .readings").length`); n != 0 {
+	if n := eval[int](b, `document.querySelectorAll(".again, .arrow, #ladder .legend, .readings").length`); n != 0 {
 		t.Errorf("%d marks of resamples without resamples", n)
 	}
 	if n := eval[int](b, `[...document.querySelectorAll("tbody.rung td.axis svg")].filter(s => s.getAttribute("height") !== "26").length`); n != 0 {

@@ -335,7 +335,7 @@ func TestWithoutScript(t *testing.T) {
 		chromedp.Evaluate(`document.body.innerText`, &text), chromedp.Evaluate(`[...document.querySelectorAll("button, select, input")].filter(e => e.checkVisibility()).length`, &controls)); err != nil {
 		t.Fatal(err)
 	}
-	for _, want := range []string{"Leave it alone", "Drop glazing", "How they predict", "Run record", "data custodian"} {
+	for _, want := range []string{"Leave it alone", "Drop glazing", "How they predict", "If this were the truth", "Every truth in one table", "Classical: errors are independent", "Run record", "data custodian"} {
 		if !strings.Contains(text, want) {
 			t.Errorf("without script the page lacks %q", want)
 		}

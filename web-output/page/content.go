@@ -6,6 +6,8 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"modelmend/fit/figures"
 	"modelmend/web-output/view"
@@ -61,6 +63,7 @@ func choicesOf(r *view.Results) []choice {
 type content struct {
 	Results *view.Results
 	Choices []choice
+	Errors  []errorsOf
 	Data    template.JS
 	Style   template.CSS
 	Library template.JS
@@ -75,6 +78,8 @@ type content struct {
 	Tuned  []tuned
 	Tall   bool // rungs have room for a second interval
 	Prior  bool // a prior is implied somewhere
+	WhatIf *whatIf
+	Leak   string // what random folds hide, where it was measured
 }
 
 // axis maps values to percentages of the width.
@@ -184,9 +189,11 @@ type rung struct {
 	Mark    mark
 	Again   stretch
 	Said    string
-	Told    string   // what repeating the procedure gave
-	Prior   string   // the posterior standard deviation, where a prior is implied
-	Ratio   view.Num // standard error over that of as-is
+	Told    string     // what repeating the procedure gave
+	Kinds   []kindLine // every kind of standard error
+	Missing string     // that the kind shown is missing
+	Prior   string     // the posterior standard deviation, where a prior is implied
+	Ratio   view.Num   // standard error over that of as-is
 	RootMSE view.Num
 	Meaning string
 	Card    view.Card
@@ -253,6 +260,12 @@ func (p *content) fill() {
 		p.Focus = p.Choices[0]
 		p.fillLadder()
 		p.fillTuned()
+		p.fillTruths()
+	}
+	for _, n := range r.Notes {
+		if n.Code == "folds-leak" {
+			p.Leak = n.Text
+		}
 	}
 }
 
@@ -277,12 +290,21 @@ func (p *content) fillLadder() {
 	p.Tall = r.Run.Resampling.Count > 0
 	for i, a := range r.Alternatives {
 		g := rung{Alternative: a, Index: i, Ratio: view.None(), RootMSE: view.None()}
-		g.Shown, _, g.Has = pick(a, p.Focus)
+		at := 0
+		g.Shown, at, g.Has = pick(a, p.Focus)
 		if i == 0 {
 			base = g.Shown.StandardError
 		}
 		if g.Has {
 			g.Shown.Resampled = sixOf(g.Shown.Resampled)
+			own := p.Errors[i].Coefficients
+			if p.Focus.Derived {
+				own = p.Errors[i].Derived
+			}
+			g.Kinds = kindLines(r.Run.StandardErrors, p.Errors[i], own[at], g.Shown.Estimate)
+			if len(own[at].SE) > 0 && own[at].SE[0].IsNone() && p.Errors[i].Reasons[0] != "" {
+				g.Missing = "no " + r.Run.StandardErrors[0].Kind + " standard error"
+			}
 			g.Told = told(g.Shown.Resampled, g.Shown.Estimate, r.Run.Resampling)
 			if d := g.Shown.PosteriorSD; !d.IsNone() {
 				g.Prior = posterior(d)
@@ -333,6 +355,9 @@ func said(g rung) string {
 		parts = append(parts, "not identified")
 	case g.Shown.Status == "different quantity":
 		parts = append(parts, "a different quantity")
+	}
+	if g.Missing != "" {
+		parts = append(parts, g.Missing)
 	}
 	var ends []string
 	if g.Again.CutLow {
@@ -504,6 +529,28 @@ func awayFromTie(v float64, digits int) float64 {
 
 func minus(s string) string { return strings.Replace(s, "-", "−", 1) }
 
+// sentence begins a text with a capital.
+func sentence(s string) string {
+	r, n := utf8.DecodeRuneInString(s)
+	if n == 0 || r == utf8.RuneError {
+		return s
+	}
+	return string(unicode.ToUpper(r)) + s[n:]
+}
+
+// apart says what is kept together in the folds set beside random ones.
+func apart(kind string) string {
+	switch kind {
+	case "clusters":
+		return "whole clusters held out"
+	case "blocks":
+		return "stretches of time held out"
+	case "rolling":
+		return "later periods predicted from earlier ones"
+	}
+	return kind
+}
+
 var functions = template.FuncMap{
 	"num":  func(v view.Num) string { return Figure(float64(v), 3) },
 	"fig":  func(v float64) string { return Figure(v, 3) },
@@ -523,7 +570,18 @@ var functions = template.FuncMap{
 	"coefOf":   func(a view.Alternative, i int) view.Coefficient { return a.Coefficients[i] },
 	"words":    func(s []string) string { return strings.Join(s, ", ") },
 	"none":     func(v view.Num) bool { return v.IsNone() },
-	"sentence": func(s string) string { return strings.ToUpper(s[:min(1, len(s))]) + s[min(1, len(s)):] },
+	"sentence": sentence,
+	"stop":     func(s string) string { return strings.TrimSuffix(s, ".") + "." },
+	"lead":     func(s string) string { before, _, _ := strings.Cut(s, " ("); return before },
+	"after":    func(s string) string { return strings.TrimPrefix(s, strings.SplitN(s, " (", 2)[0]) },
+	"percents": func(s string) string { return strings.ReplaceAll(s, " %", "\u00a0%") },
+	"folds":    view.FoldSentence,
+	"of":       view.Of,
+	"tenth":    tenth,
+	"give":     give,
+	"points":   points,
+	"apart":    apart,
+	"coverage": func(r truthRow, nominal float64) coverageMark { return coverageMark{r.Mark, nominal, r.Hollow} },
 	"plain":    plain,
 	"portion":  portion,
 	"tip":      func(at float64, cut, low bool) lineEnd { return lineEnd{at, cut, low} },

@@ -27,7 +27,7 @@ var files embed.FS
 // styles and modules are joined in this order.
 var (
 	styles  = []string{"base", "table", "figure", "print"}
-	modules = []string{"format", "state", "interval", "charts", "ladder", "matrix", "tuning", "copy", "main"}
+	modules = []string{"format", "state", "interval", "charts", "kinds", "ladder", "matrix", "tuning", "truths", "copy", "main"}
 )
 
 // assets are the parts that are the same for every page.
@@ -90,16 +90,23 @@ func hash(s string) string {
 	return "sha256-" + base64.StdEncoding.EncodeToString(sum[:])
 }
 
-// slim leaves out of the page's data what results.json alone needs: the fold of every row, the covariances, and digits of the paths that no
-// slider shows.
+// slim leaves out of the page's data what results.json alone needs: the fold of every row, the covariances, texts that stand in the page already, the
+// kinds of standard error (they are written down shorter, see errorsIn), and digits that nothing shows.
 func slim(r *view.Results) *view.Results {
 	out := *r
 	out.Run.Folds.Assignment = [][]int{}
+	out.Cards, out.NotApplicable, out.Run.Study = []view.Card{}, []view.NotApplicable{}, ""
 	out.Alternatives = append([]view.Alternative{}, r.Alternatives...)
 	for i := range out.Alternatives {
 		a := &out.Alternatives[i]
 		a.Covariance = [][]view.Num{}
 		a.Coefficients, a.Derived = lighter(a.Coefficients), lighter(a.Derived)
+		a.Tests, a.BreakEven, a.WorstCoverage, a.Costs, a.Notes = []view.Test{}, []view.BreakEven{}, []view.WorstCoverage{}, []string{}, []view.Note{}
+		a.Simulation = append([]view.Simulation{}, a.Simulation...)
+		for k := range a.Simulation {
+			a.Simulation[k] = lightSimulation(a.Simulation[k])
+		}
+		a.OutOfSample.Folds, a.OutOfSample.Apart = []view.FoldError{}, nil
 		if a.Tuning == nil {
 			continue
 		}
@@ -122,6 +129,7 @@ func lighter(list []view.Coefficient) []view.Coefficient {
 	out := append([]view.Coefficient{}, list...)
 	for i := range out {
 		out[i].Resampled = sixOf(out[i].Resampled)
+		out[i].Errors = []view.StandardError{}
 	}
 	return out
 }
@@ -171,16 +179,17 @@ func Write(w io.Writer, r *view.Results) error {
 	if err != nil {
 		return err
 	}
-	choices := choicesOf(r)
+	choices, errors := choicesOf(r), errorsIn(r)
 	data, err := json.Marshal(struct {
 		Results *view.Results `json:"results"`
 		Charts  chart.Options `json:"charts"`
 		Choices []choice      `json:"choices"`
-	}{slim(r), charts, choices})
+		Errors  []errorsOf    `json:"errors"`
+	}{slim(r), charts, choices, errors})
 	if err != nil {
 		return fmt.Errorf("the page's data cannot be written: %w", err)
 	}
-	p := &content{Results: r, Choices: choices, Data: template.JS(data), Style: template.CSS(a.style), Library: template.JS(a.library), Script: template.JS(a.script), Policy: a.policy}
+	p := &content{Results: r, Choices: choices, Errors: errors, Data: template.JS(data), Style: template.CSS(a.style), Library: template.JS(a.library), Script: template.JS(a.script), Policy: a.policy}
 	p.fill()
 	var b bytes.Buffer
 	if err := a.template.Execute(&b, p); err != nil {

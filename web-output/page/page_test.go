@@ -225,6 +225,96 @@ func TestResampledOrNot(t *testing.T) {
 	}
 }
 
+// TestTruthsOrNot: with samples the part has an answer, a drawing a row, every truth in one table; without, the reason in one line.
+func TestTruthsOrNot(t *testing.T) {
+	part := func(html string) string {
+		s := html[strings.Index(html, `<section id="truths"`):]
+		return s[:strings.Index(s, "</section>")]
+	}
+	with := render(t, numbers(60, 3), terms(3), func(s *compare.Study) { s.Simulations, s.Focal = 40, []string{"x0", "x2"} })
+	sane(t, with)
+	got := part(with)
+	rows := strings.Count(got, "data-truth=")
+	if rows < 5 || strings.Count(got, `class="nominal"`) != rows+1 {
+		t.Errorf("%d rows, %d lines of what is promised", rows, strings.Count(got, `class="nominal"`))
+	}
+	// Three truths of two coefficients.
+	if n := strings.Count(got, `scope="rowgroup"`); n != 6 {
+		t.Errorf("%d truths in the table, want 6", n)
+	}
+	for _, want := range []string{"If the truth is what was estimated, ", `<option value="1">x2</option>`, "40 samples for each truth", "of x0</span> is in truth"} {
+		if !strings.Contains(got, want) {
+			t.Errorf("the part lacks %q", want)
+		}
+	}
+	without := part(render(t, numbers(60, 3), terms(3), nil))
+	if !strings.Contains(without, "Nothing was simulated: the study asks for no simulated samples.") || strings.Contains(without, "<table") || strings.Contains(without, "<input") {
+		t.Errorf("without samples the part is %s", without)
+	}
+}
+
+// TestKindsOfError: every kind stands in the page without script; where one alone was computed there is no choice but a line.
+func TestKindsOfError(t *testing.T) {
+	table, err := dataset.Read(strings.NewReader(numbers(60, 3)), "table.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	s := &compare.Study{Data: "table.csv", Equation: terms(3), Purpose: compare.Explain, Seed: 1, Cutoffs: collinear.DefaultCutoffs()}
+	c, err := compare.Run(context.Background(), table, s, compare.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	r := view.Build(c, "", "test")
+	many := write(t, r)
+	for _, want := range []string{`name="kind" value="1"`, "<li><strong>robust</strong>: standard error ", "factor realised", "Classical: errors are independent and of equal variance.", "whatever kind of standard error is shown"} {
+		if !strings.Contains(many, want) {
+			t.Errorf("with two kinds the page lacks %q", want)
+		}
+	}
+	r.Run.StandardErrors = r.Run.StandardErrors[:1]
+	for i := range r.Diagnosis.Ledger {
+		r.Diagnosis.Ledger[i].Others = nil
+	}
+	one := write(t, r)
+	sane(t, one)
+	if strings.Contains(one, `name="kind" value`) || strings.Contains(one, "factor realised") || !strings.Contains(one, "Standard errors of one kind were computed.") {
+		t.Error("with one kind the page offers a choice, or does not say that there is none")
+	}
+}
+
+// TestLeakingFolds: where folds leak both errors stand side by side, and the note names the leak; the part says how folds were drawn.
+func TestLeakingFolds(t *testing.T) {
+	lines := strings.Split(strings.TrimSpace(numbers(80, 3)), "\n")
+	lines[0] += ",g,t"
+	for i := range lines[1:] {
+		lines[i+1] += fmt.Sprintf(",%d,%d", i%20, i)
+	}
+	csv := strings.Join(lines, "\n") + "\n"
+	for _, k := range []struct {
+		edit func(*compare.Study)
+		want []string
+		leak bool
+	}{
+		{func(s *compare.Study) {
+			s.Clusters, s.Folds = []string{"g"}, compare.FoldSpec{Kind: "random", Count: 5, Repeats: 2}
+		}, []string{"Rows are dealt at random into 5 folds, twice;", "folds of kind random, as asked for", "whole clusters held out", "leaks into the training rows"}, true},
+		{func(s *compare.Study) { s.Clusters, s.Folds = []string{"g"}, compare.FoldSpec{Count: 5, Repeats: 1} }, []string{"Whole clusters are dealt into 5 folds, once, so that no cluster stands on both sides of a split;"}, false},
+		{func(s *compare.Study) { s.Time = "t" }, []string{"Time is cut into 10 stretches of neighbouring periods, each held out in turn;"}, false},
+		{func(s *compare.Study) { s.Time, s.Folds = "t", compare.FoldSpec{Kind: "rolling", Count: 4, Gap: 2} }, []string{"The last 4 segments of time are held out in turn, each predicted from earlier periods alone, the 2 periods just before it left out;", "Time is cut into 7 segments"}, false},
+	} {
+		html := render(t, csv, terms(3), k.edit)
+		sane(t, html)
+		for _, want := range k.want {
+			if !strings.Contains(html, want) {
+				t.Errorf("the page lacks %q", want)
+			}
+		}
+		if strings.Contains(html, "as asked for") != k.leak {
+			t.Errorf("errors side by side: %v, want %v", !k.leak, k.leak)
+		}
+	}
+}
+
 // TestFigures holds the Go twin to a table made by hand; format.test.js holds the other to the same.
 func TestFigures(t *testing.T) {
 	raw, err := os.ReadFile("testdata/figures.json")

@@ -43,6 +43,7 @@ type Answers struct {
 	Sign       string   `json:"sign"`
 	Prediction string   `json:"prediction"`
 	Tuning     string   `json:"tuning"`
+	Truth      string   `json:"truth"` // what the remedies do if the estimates were the truth
 }
 
 // Note is a remark that does not stop the analysis.

@@ -33,6 +33,7 @@ func answers(c *compare.Comparison, r *Results) Answers {
 	a.Sign = signSentence(c, r)
 	a.Prediction = predictionSentence(r)
 	a.Tuning = tuningSentence(r)
+	a.Truth = truthSentence(r)
 	return a
 }
 
@@ -175,6 +176,144 @@ func predictionSentence(r *Results) string {
 		return s + "; the difference is beyond its uncertainty."
 	}
 	return s + "; the difference is within its uncertainty."
+}
+
+// lowCoverage is the share of samples below which a nominal 95 % interval is said to cover too little: a mark of this project's own.
+const lowCoverage = 0.9
+
+// Simulated finds what an alternative does to a coefficient under a truth, and whether its estimates there can be compared: they are of the same quantity,
+// and not set to zero in every sample.
+func (a *Alternative) Simulated(truth, coefficient string) (s Simulation, comparable bool) {
+	status := "absent"
+	for _, k := range append(append([]Coefficient{}, a.Derived...), a.Coefficients...) {
+		if k.Name == coefficient {
+			status = k.Status
+			break
+		}
+	}
+	for _, s := range a.Simulation {
+		if s.Truth == truth && s.Coefficient == coefficient {
+			return s, (status == "estimated" || status == "implied" || status == "zero") && s.SD != 0
+		}
+	}
+	return Simulation{}, false
+}
+
+// Of names a coefficient, or an effect, within a sentence.
+func Of(coefficient string) string {
+	if strings.HasPrefix(coefficient, "effect of ") {
+		return "the " + coefficient
+	}
+	return "the coefficient of " + coefficient
+}
+
+// truthSentence says, for the first coefficient and truth that were simulated, which alternative comes closest and whose intervals cover too little.
+func truthSentence(r *Results) string {
+	if r.Simulations.Count == 0 || len(r.Alternatives) == 0 || len(r.Alternatives[0].Simulation) == 0 {
+		return ""
+	}
+	base := r.Alternatives[0].Simulation[0]
+	best, nearest, label := 0, base, ""
+	var low, decided []string
+	least, leastLabel, judged := math.Inf(1), "", 0
+	for i := range r.Alternatives {
+		a := &r.Alternatives[i]
+		s, ok := a.Simulated(base.Truth, base.Coefficient)
+		if !ok {
+			continue
+		}
+		if s.RMSE < nearest.RMSE {
+			best, nearest, label = i, s, a.Label
+		}
+		if s.Coverage.IsNone() {
+			continue
+		}
+		judged++
+		if float64(s.Coverage)+2*float64(s.CoverageError) >= lowCoverage {
+			continue
+		}
+		low = append(low, a.Label)
+		if a.Remedy == "drop-by-rule" {
+			decided = append(decided, fmt.Sprintf("%s: %s", a.Label, wholePercent(s.Coverage)))
+		}
+		if c := float64(s.Coverage); c < least {
+			least, leastLabel = c, a.Label
+		}
+	}
+	text := "If the truth is what was estimated, "
+	if best == 0 || float64(base.RMSE-nearest.RMSE) < 2*math.Hypot(float64(base.RMSEError), float64(nearest.RMSEError)) {
+		text += fmt.Sprintf("no alternative comes clearly closer to %s than the model left alone, whose root mean squared error is %s", Of(base.Coefficient), Short(float64(base.RMSE)))
+	} else {
+		text += fmt.Sprintf("%s comes closest to %s, with a root mean squared error of %s against %s for the model left alone", label, Of(base.Coefficient), Short(float64(nearest.RMSE)), Short(float64(base.RMSE)))
+		if c := nearest; !c.Coverage.IsNone() && float64(c.Coverage)+2*float64(c.CoverageError) < lowCoverage {
+			text += fmt.Sprintf(", but its 95 %% interval holds the truth in %s of the samples", only(c.Coverage))
+		}
+	}
+	switch {
+	case judged == 0:
+		return text + "."
+	case len(low) == 0:
+		return text + ". No nominal 95 % interval holds it in clearly under 90 % of the samples."
+	}
+	hold := "hold"
+	if len(low) == 1 {
+		hold = "holds"
+	}
+	text += fmt.Sprintf(". Of %d nominal 95 %% intervals %d %s it in clearly under 90 %% of the samples, ", judged, len(low), hold)
+	if len(decided) > 0 {
+		which := "the drop"
+		if len(decided) > 1 {
+			which = "the drops"
+		}
+		return text + fmt.Sprintf("among them %s that the data decide (%s).", which, strings.Join(first(decided, 3), "; "))
+	}
+	return text + fmt.Sprintf("least often that of %s (%s).", leastLabel, wholePercent(Num(least)))
+}
+
+func only(share Num) string {
+	if share == 0 {
+		return "none"
+	}
+	return "only " + wholePercent(share)
+}
+
+func wholePercent(share Num) string {
+	return fmt.Sprintf("%.0f %%", math.Floor(100*float64(share)+0.5))
+}
+
+// FoldSentence says how rows were held out.
+func FoldSentence(f Folds) string {
+	times := "once"
+	if f.Repeats == 2 {
+		times = "twice"
+	} else if f.Repeats > 2 {
+		times = fmt.Sprintf("%d times over", f.Repeats)
+	}
+	switch f.Kind {
+	case "":
+		return ""
+	case "leave-one-out":
+		return "Each row is held out in turn"
+	case "clusters":
+		return fmt.Sprintf("Whole clusters are dealt into %d folds, %s, so that no cluster stands on both sides of a split", f.Count, times)
+	case "blocks":
+		return fmt.Sprintf("Time is cut into %d stretches of neighbouring periods, each held out in turn", f.Count)
+	case "rolling":
+		s := fmt.Sprintf("The last %d segments of time are held out in turn, each predicted from earlier periods alone", f.Count)
+		switch {
+		case f.Gap == 1:
+			s += ", the period just before it left out"
+		case f.Gap > 1:
+			s += fmt.Sprintf(", the %d periods just before it left out", f.Gap)
+		}
+		return s
+	case "column":
+		if f.Repeats > 1 {
+			return fmt.Sprintf("Columns of the data name the folds, up to %d in each of %d repeats", f.Count, f.Repeats)
+		}
+		return fmt.Sprintf("A column of the data names the %d folds", f.Count)
+	}
+	return fmt.Sprintf("Rows are dealt at random into %d folds, %s", f.Count, times)
 }
 
 // buildAdvice gives advice only where the reason is plain: it leaves the model alone when the focal coefficient is not

@@ -38,3 +38,24 @@ export function portion(share) {
   if (p < 5 || p > 95) return (Math.floor(10 * p + 0.5) / 10).toFixed(1) + "\u00a0%";
   return Math.floor(p + 0.5).toFixed(0) + "\u00a0%";
 }
+
+// tenth says a share in per cent with one decimal. The twin of tenth in truths.go, as are give and points.
+export function tenth(share) {
+  return share === null || share === undefined ? "–" : (Math.floor(1000 * share + 0.5) / 10).toFixed(1) + "\u00a0%";
+}
+
+// give says a Monte Carlo error; nothing where there is none.
+export function give(e) {
+  return e === null || e === undefined ? "" : "± " + figure(e, 2);
+}
+
+// points is give for a share.
+export function points(e) {
+  return e === null || e === undefined ? "" : "± " + (Math.floor(1000 * e + 0.5) / 10).toFixed(1);
+}
+
+// chance says a p-value with three decimals. The twin of chance in kinds.go.
+export function chance(p) {
+  if (p === null || p === undefined) return "–";
+  return p < 0.0005 ? "under 0.001" : (Math.floor(1000 * p + 0.5) / 1000).toFixed(3);
+}

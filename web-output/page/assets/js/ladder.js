@@ -2,6 +2,7 @@
 import { figure, portion, scaled, root } from "./format.js";
 import { newAxis, drawTicks, drawInterval, stretch } from "./interval.js";
 import { position } from "./state.js";
+import { inKind, kindsOf, kindLines } from "./kinds.js";
 
 // coefficientOf finds the chosen coefficient in an alternative: {place, value} or null. Names are compared, never used as keys.
 export function coefficientOf(alternative, choice) {
@@ -149,11 +150,19 @@ function rowOf(page, body, choice, by) {
     row.out = root(alternative.tuning.path[i].error);
     row.diff = null;
     row.step = i;
+    if (state.kind !== 0) {
+      row.se = row.low = row.high = null;
+      row.missing = `no ${results.run.standardErrors[state.kind].kind} standard error along the path`;
+    }
     return row;
   }
   body.hidden = state.hidden.includes(a);
   const found = coefficientOf(alternative, choice);
-  const row = found ? inUnits(found.value, by) : { estimate: null, se: null, low: null, high: null, bias: null, root: null, posterior: null, again: null, status: "absent" };
+  const errors = page.errors[a];
+  const own = found ? kindsOf(errors, choice.derived, found.place) : null;
+  const row = found ? inUnits(inKind(found.value, errors, own, state.kind), by) : { estimate: null, se: null, low: null, high: null, bias: null, root: null, posterior: null, again: null, status: "absent" };
+  if (own && own.se[state.kind] === null && errors.reasons[state.kind] !== "") row.missing = `no ${results.run.standardErrors[state.kind].kind} standard error`;
+  row.kinds = found ? kindLines(results.run.standardErrors, errors, own, found.value.estimate, by) : [];
   row.out = alternative.outOfSample.rmse;
   row.diff = alternative.outOfSample.difference.estimate;
   if (row.status === "different quantity") row.bias = row.root = null;
@@ -168,7 +177,7 @@ function fill(page, body, row, band, axis, choice) {
   let said = row.status === "absent" ? "no such coefficient" : "";
   for (const [status, text] of statusText) if (row.status === status) said = text;
   if (row.estimate === null && page.state.unit === "sd" && choice.sd === null) said = "no standard deviation of its own";
-  field("said").textContent = [said, beyond(axis, row.again)].filter((t) => t).join("; ");
+  field("said").textContent = [said, row.missing, beyond(axis, row.again)].filter((t) => t).join("; ");
   field("estimate").textContent = figure(row.estimate, 3);
   const se = field("se");
   se.textContent = figure(row.se, 3);
@@ -188,6 +197,9 @@ function fill(page, body, row, band, axis, choice) {
   let meaning = "";
   for (const m of a.meaning) if (m.coefficient === choice.name) meaning = m.text;
   field("meaning").textContent = meaning;
+  const kinds = field("kinds");
+  kinds.replaceChildren(...row.kinds.map(([name, text]) => line(name, text)));
+  kinds.hidden = row.kinds.length === 0;
   tell(field("told"), told(row.again, row.estimate, page.results.run.resampling));
   tell(field("prior"), posterior(row.posterior));
 }
@@ -195,6 +207,14 @@ function fill(page, body, row, band, axis, choice) {
 function tell(p, text) {
   p.textContent = text;
   p.hidden = text === "";
+}
+
+// line is a point of a list with its name set off.
+function line(name, text) {
+  const li = document.createElement("li"), strong = document.createElement("strong");
+  strong.textContent = name;
+  li.append(strong, ": " + text);
+  return li;
 }
 
 function small(cell, text) {

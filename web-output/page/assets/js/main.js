@@ -1,16 +1,19 @@
 // Starts the page: reads the data block, mounts the modules, keeps state and address together.
 import { readState, writeState, emptyState } from "./state.js";
+import { mountKinds } from "./kinds.js";
 import { mountLadder } from "./ladder.js";
 import { mountMatrix } from "./matrix.js";
 import { mountTuning } from "./tuning.js";
+import { mountTruths, simulatedNames } from "./truths.js";
 import { mountCharts } from "./charts.js";
 import { mountCopy } from "./copy.js";
 
 function start() {
   const data = JSON.parse(document.getElementById("view").textContent);
-  const page = { results: data.results, choices: data.choices, charts_: data.charts, state: emptyState() };
+  const page = { results: data.results, choices: data.choices, charts_: data.charts, errors: data.errors, state: emptyState() };
   const limits = {
-    choices: page.choices.length, rungs: page.results.alternatives.length,
+    choices: page.choices.length, rungs: page.results.alternatives.length, kinds: page.results.run.standardErrors.length,
+    truths: page.results.simulations.truths.length, truthsOf: simulatedNames(page.results.alternatives).length,
     paths: [...page.results.alternatives.entries()].filter(([, a]) => a.tuning).map(([i, a]) => [i, a.tuning.path.length]),
   };
   const anchors = [...document.querySelectorAll("nav a")].map((a) => a.getAttribute("href"));
@@ -20,7 +23,7 @@ function start() {
   page.say = (text) => { live.textContent = text; };
   document.documentElement.dataset.ready = "0"; // shows what needs script, so that charts have a width
   page.charts = mountCharts(page);
-  const parts = [mountLadder(page), mountMatrix(page), mountTuning(page)];
+  const parts = [mountKinds(page), mountLadder(page), mountMatrix(page), mountTuning(page), mountTruths(page)];
   const controls = mountControls(page);
   page.refresh = () => {
     controls();

@@ -1,10 +1,11 @@
 // What the reader chose: one object, mirrored in the address so that a view can be shared. Reads no data.
 
 export function emptyState() {
-  return { choice: 0, unit: "raw", sort: null, down: false, hidden: [], at: [] };
+  return { choice: 0, unit: "raw", kind: 0, truth: 0, truthOf: 0, sort: null, down: false, hidden: [], at: [] };
 }
 
-// readState takes a hash apart; whatever is not understood is left at its default. limits: {choices, rungs, paths: [[alternative, length]]}.
+// readState takes a hash apart; whatever is not understood is left at its default. limits: {choices, rungs, kinds, truths, truthsOf, paths:
+// [[alternative, length]]}.
 export function readState(hash, limits) {
   const s = emptyState();
   const p = new URLSearchParams(hash.replace(/^#/, ""));
@@ -12,6 +13,10 @@ export function readState(hash, limits) {
   const c = whole(p.get("c"), limits.choices);
   if (c !== null) s.choice = c;
   if (p.get("u") === "sd") s.unit = "sd";
+  for (const [key, name, below] of [["e", "kind", limits.kinds], ["w", "truth", limits.truths], ["v", "truthOf", limits.truthsOf]]) {
+    const i = whole(p.get(key), below);
+    if (i !== null) s[name] = i;
+  }
   const sort = p.get("s");
   if (["estimate", "se", "bias", "root", "out", "diff"].includes(sort)) s.sort = sort;
   s.down = p.get("d") === "1";
@@ -30,6 +35,9 @@ export function writeState(s) {
   const p = new URLSearchParams();
   if (s.choice) p.set("c", s.choice);
   if (s.unit !== "raw") p.set("u", s.unit);
+  if (s.kind) p.set("e", s.kind);
+  if (s.truth) p.set("w", s.truth);
+  if (s.truthOf) p.set("v", s.truthOf);
   if (s.sort) p.set("s", s.sort);
   if (s.down) p.set("d", "1");
   if (s.hidden.length) p.set("h", [...s.hidden].sort((a, b) => a - b).join("."));
