@@ -64,23 +64,7 @@ func (r ridgeFit) values() ([]float64, int) {
 	if !ok {
 		return r.p.Penalties, -1
 	}
-	var out []float64
-	at := -1
-	for _, v := range r.p.Penalties {
-		if at < 0 && fixed <= v {
-			at = len(out)
-			out = append(out, fixed)
-			if v == fixed {
-				continue
-			}
-		}
-		out = append(out, v)
-	}
-	if at < 0 {
-		at = len(out)
-		out = append(out, fixed)
-	}
-	return out, at
+	return withFixed(r.p.Penalties, fixed)
 }
 
 func (r ridgeFit) learn(t Training) *Fitted {
