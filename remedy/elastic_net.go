@@ -92,6 +92,7 @@ type netFit struct {
 func (n netFit) path(s *linear.Sample, last int, degrees []float64) [][]float64 {
 	c, r, scale, length := s.Standardized()
 	net := linear.NewNet(c, r)
+	net.Know(s.Spectrum(nil))
 	out := make([][]float64, len(n.values))
 	buffer := make([]float64, len(n.values)*s.P)
 	for i := len(n.values) - 1; i >= last; i-- {

@@ -11,8 +11,8 @@ const exhausted = 1e-13
 // RidgeSlopes and PathSSE take them: weight k times UZ[k] is the coefficient on direction k.
 //
 // There are Rank+1 fits. The last is least squares, 1/Sigma[k]; so are those after the point where y leaves no further direction. Only for a spectrum
-// without spared regressors. The work is the bidiagonalisation of Golub and Kahan, started at R's side and kept orthogonal by doing every
-// orthogonalisation twice. Cost O(rank^3) once the spectrum is known.
+// without spared regressors. The work is the bidiagonalisation of Golub and Kahan, started at R's side and kept orthogonal to all earlier
+// directions. Cost O(rank^3) once the spectrum is known.
 //
 // Source: Wold, Ruhe, Wold and Dunn (1984), SIAM Journal on Scientific and Statistical Computing 5(3), 735-743, for the method; Golub and
 // Kahan (1965), SIAM Journal on Numerical Analysis B 2(2), 205-224, for the recursion (volume and pages from memory; the tests hold it to plain
@@ -97,26 +97,23 @@ func (sp *Spectrum) leastFrom(out [][]float64, m int) [][]float64 {
 	return out
 }
 
-func norm(v []float64) float64 {
-	s := 0.0
-	for _, x := range v {
-		s += x * x
-	}
-	return math.Sqrt(s)
-}
+func norm(v []float64) float64 { return math.Sqrt(dot(v, v)) }
 
-// orthogonalise takes the parts along the rows of basis (of unit length) out of v, twice over.
+// orthogonalise takes the parts along the rows of basis (of unit length) out of v, and again where little was left of it: then rounding may have put
+// some back.
 func orthogonalise(v, basis []float64) {
 	n := len(v)
-	for range 2 {
+	before := norm(v)
+	for range 3 {
 		for at := 0; at < len(basis); at += n {
 			row := basis[at : at+n]
-			t := 0.0
-			for k, x := range row {
-				t += x * v[k]
-			}
-			axpy(-t, row, v)
+			axpy(-dot(row, v), row, v)
 		}
+		after := norm(v)
+		if after > before/2 {
+			return
+		}
+		before = after
 	}
 }
 

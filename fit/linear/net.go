@@ -1,6 +1,9 @@
 package linear
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // Standardized returns, in float64, the correlation matrix of the regressors (p x p row-major; of the uncentred columns in a model without constant), their
 // correlations with the dependent variable, their lengths (roots of the diagonal of S) and that of the dependent variable. A column without variation
@@ -56,12 +59,56 @@ type Net struct {
 	l2       float64
 	x        []float64
 	trial    []int
+
+	// Where every column is kept and the spectrum of C is known, nothing need be factorised.
+	all            *Spectrum
+	along, byEach  []float64 // V'r, V'signs
+	weights, known []float64 // known: the signs that byEach belongs to
 }
 
 // NewNet starts at zero. c and r are kept, not copied, and not changed.
 func NewNet(c, r []float64) *Net {
 	p := len(r)
 	return &Net{p: p, c: c, r: r, b: make([]float64, p), factor: make([]float64, p*p), x: make([]float64, p)}
+}
+
+// Know tells the spectrum of C, which saves work where every column is kept. One that is not of full rank is of no use and ignored.
+func (n *Net) Know(sp *Spectrum) {
+	if sp.Rank < n.p || len(sp.Cols) < n.p || n.p < 2 {
+		return
+	}
+	n.all = sp
+	n.along, n.byEach, n.weights = make([]float64, n.p), make([]float64, n.p), make([]float64, n.p)
+	turn(sp, n.r, n.along)
+}
+
+// turn gives V'x.
+func turn(sp *Spectrum, x, to []float64) {
+	clear(to)
+	for i, v := range x {
+		axpy(v, sp.V[i*sp.Rank:(i+1)*sp.Rank], to)
+	}
+}
+
+// solveAll gives (C + l2)^-1 (r - l1 signs) for all columns, from the spectrum.
+func (n *Net) solveAll(x []float64, l1, l2 float64) {
+	same := len(n.known) == n.p
+	if !same {
+		n.known = make([]float64, n.p)
+	}
+	for i, j := range n.active {
+		same = same && n.known[j] == n.signs[i]
+		n.known[j] = n.signs[i]
+	}
+	if !same {
+		turn(n.all, n.known, n.byEach)
+	}
+	for k, s := range n.all.Sigma {
+		n.weights[k] = (n.along[k] - l1*n.byEach[k]) / (s*s + l2)
+	}
+	for i, j := range n.active {
+		x[i] = dot(n.weights, n.all.V[j*n.p:(j+1)*n.p])
+	}
 }
 
 // Solve returns the minimum at l1, l2 >= 0; the slice is reused by the next call.
@@ -80,16 +127,19 @@ func (n *Net) Solve(l1, l2 float64) []float64 {
 // settle solves the active coordinates at once, dropping those whose sign would change; it reports false where they are exactly dependent.
 func (n *Net) settle(l1, l2 float64) bool {
 	for len(n.active) > 0 {
-		if !n.factorise(l2) {
-			return false
-		}
 		m := len(n.active)
 		x := n.x[:m]
-		for i, j := range n.active {
-			x[i] = n.r[j] - l1*n.signs[i]
+		if m == n.p && n.all != nil {
+			n.solveAll(x, l1, l2)
+		} else {
+			if !n.factorise(l2) {
+				return false
+			}
+			for i, j := range n.active {
+				x[i] = n.r[j] - l1*n.signs[i]
+			}
+			n.back(x, false)
 		}
-		solveLower(n.factor, m, x)
-		solveUpper(n.factor, m, x)
 		step, at := 1.0, -1
 		if l1 > 0 {
 			for i, j := range n.active {
@@ -118,44 +168,59 @@ func (n *Net) settle(l1, l2 float64) bool {
 	return true
 }
 
-// relist lists the coordinates that are not zero, with their signs.
+// relist leaves out of the active coordinates those at zero and notes the signs of the others.
 func (n *Net) relist() {
-	n.active, n.signs = n.active[:0], n.signs[:0]
-	for j, v := range n.b {
-		if v != 0 {
-			n.active = append(n.active, j)
-			n.signs = append(n.signs, math.Copysign(1, v))
-		}
+	n.active = slices.DeleteFunc(n.active, func(j int) bool { return n.b[j] == 0 })
+	n.signs = n.signs[:0]
+	for _, j := range n.active {
+		n.signs = append(n.signs, math.Copysign(1, n.b[j]))
 	}
 }
 
-// factorise makes the Cholesky factor of the active columns, unless it has it already.
+// factorise makes the Cholesky factor of the active columns, row by row (p numbers apart), keeping the rows that it has already.
 func (n *Net) factorise(l2 float64) bool {
-	m := len(n.active)
-	if l2 == n.l2 && len(n.factored) == m {
-		same := true
-		for i, j := range n.active {
-			same = same && n.factored[i] == j
-		}
-		if same {
-			return true
+	have := 0
+	if l2 == n.l2 {
+		for have < min(len(n.factored), len(n.active)) && n.factored[have] == n.active[have] {
+			have++
 		}
 	}
-	n.factored = n.factored[:0]
-	a := n.factor[:m*m]
-	for i, j := range n.active {
-		row := n.c[j*n.p : j*n.p+n.p]
-		for k, l := range n.active[:i] {
-			a[i*m+k] = row[l]
-		}
-		a[i*m+i] = row[j] + l2
-	}
-	if !cholesky(a, m) {
-		return false
-	}
-	n.factored = append(n.factored, n.active...)
 	n.l2 = l2
+	n.factored = n.factored[:have]
+	for i := have; i < len(n.active); i++ {
+		j := n.active[i]
+		from := n.c[j*n.p : j*n.p+n.p]
+		row := n.factor[i*n.p : i*n.p+i+1]
+		for k, l := range n.active[:i] {
+			row[k] = (from[l] - dot(row[:k], n.factor[k*n.p:k*n.p+k])) / n.factor[k*n.p+k]
+		}
+		d := from[j] + l2 - dot(row[:i], row[:i])
+		if !(d > lightTolerance) {
+			return false
+		}
+		row[i] = math.Sqrt(d)
+		n.factored = append(n.factored, j)
+	}
 	return true
+}
+
+// back solves for x with the factor, forward only where half is set.
+func (n *Net) back(x []float64, half bool) {
+	for i := range x {
+		row := n.factor[i*n.p : i*n.p+i+1]
+		x[i] = (x[i] - dot(row[:i], x[:i])) / row[i]
+	}
+	if half {
+		return
+	}
+	for i := len(x) - 1; i >= 0; i-- {
+		row := n.factor[i*n.p : i*n.p+i+1]
+		x[i] /= row[i]
+		v := x[i]
+		for c, f := range row[:i] {
+			x[c] -= v * f
+		}
+	}
 }
 
 // gradient is r_j - sum C_jk b_k.
@@ -238,7 +303,7 @@ func (n *Net) Degrees(l2 float64) float64 {
 	for j := range m {
 		clear(col)
 		col[j] = 1
-		solveLower(n.factor, m, col)
+		n.back(col, true)
 		for _, v := range col {
 			trace += v * v
 		}

@@ -35,9 +35,11 @@ func TestNetConditions(t *testing.T) {
 		p := 1 + rng.IntN(25)
 		common := []float64{0, 1, 4, 15}[seed%4]
 		x, y := random(seed, p+8+rng.IntN(60), p, common)
-		c, r, _, _ := sampleOf(t, x, y, seed%3 > 0).Standardized()
+		s := sampleOf(t, x, y, seed%3 > 0)
+		c, r, _, _ := s.Standardized()
 		for _, mix := range []float64{0, 0.05, 0.5, 0.9, 1} {
 			net := NewNet(c, r)
+			net.Know(s.Spectrum(nil))
 			most := 0
 			for i := range 80 {
 				penalty := 2 * math.Pow(0.85, float64(i))
