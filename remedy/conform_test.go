@@ -236,7 +236,7 @@ func TestOrderAndLookUp(t *testing.T) {
 	if all[0].Key != "as-is" {
 		t.Errorf("%s stands first, want as-is", all[0].Key)
 	}
-	for _, key := range []string{"as-is", "drop", "index", "components", "partial-least-squares", "ridge", "center"} {
+	for _, key := range []string{"as-is", "drop", "index", "components", "partial-least-squares", "ridge", "elastic-net", "select", "center"} {
 		if _, ok := remedy.Find(key); !ok {
 			t.Errorf("no remedy %q", key)
 		}

@@ -310,3 +310,48 @@ func (n *Net) Degrees(l2 float64) float64 {
 	}
 	return float64(m) - l2*trace
 }
+
+// Unvaried is the share of a column's variation beside others below which nothing is left of it.
+const Unvaried = lightTolerance
+
+// PartialOut takes column k out of the others in a q x q matrix of cross-products whose diagonal began at one, in place; its own row and column become zero. It
+// reports whether there was anything left of it to take out.
+func PartialOut(a []float64, q, k int) bool {
+	d := a[k*q+k]
+	if d > Unvaried {
+		row := slices.Clone(a[k*q : k*q+q])
+		for i := range q {
+			axpy(-row[i]/d, row, a[i*q:i*q+q])
+		}
+	}
+	for i := range q {
+		a[k*q+i], a[i*q+k] = 0, 0
+	}
+	return d > Unvaried
+}
+
+// Unexplained returns 1 - R² of least squares on the columns in keep, C their correlations and r those with the dependent variable, all p of them; a column
+// that depends on those before it is passed over.
+func Unexplained(c, r []float64, keep []int) float64 {
+	p := len(r)
+	var used []int
+	var l [][]float64
+	var z []float64
+	out := 1.0
+	for _, j := range keep {
+		row := make([]float64, len(used)+1)
+		for k, i := range used {
+			row[k] = (c[j*p+i] - dot(row[:k], l[k][:k])) / l[k][k]
+		}
+		m := len(used)
+		d := c[j*p+j] - dot(row[:m], row[:m])
+		if !(d > Unvaried) {
+			continue
+		}
+		row[m] = math.Sqrt(d)
+		v := (r[j] - dot(row[:m], z)) / row[m]
+		out -= v * v
+		used, l, z = append(used, j), append(l, row), append(z, v)
+	}
+	return out
+}
