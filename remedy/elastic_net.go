@@ -119,7 +119,7 @@ func (n netFit) path(s *linear.Sample, last int, degrees []float64) [][]float64 
 }
 
 func (n netFit) learn(t Training) *Fitted {
-	tuning := &Tuning{Parameter: "penalty", Fixed: n.at >= 0, Values: n.values}
+	tuning := &Tuning{Parameter: "penalty", Fixed: n.at >= 0, Values: n.values, OnSquares: n.mix == 0}
 	if n.at < 0 || t.Final {
 		tuning.MSE, tuning.MSESD = tune(t.Inner, len(n.values), func(s Split) []float64 {
 			slopes := n.path(s.Train, 0, nil)

@@ -69,7 +69,7 @@ func (r ridgeFit) values() ([]float64, int) {
 
 func (r ridgeFit) learn(t Training) *Fitted {
 	values, at := r.values()
-	tuning := &Tuning{Parameter: "penalty", Fixed: at >= 0, Values: values}
+	tuning := &Tuning{Parameter: "penalty", Fixed: at >= 0, Values: values, OnSquares: true}
 	if at < 0 || t.Final {
 		tuning.MSE, tuning.MSESD = tune(t.Inner, len(values), func(s Split) []float64 {
 			sp := s.Train.Spectrum(r.spare)
