@@ -135,3 +135,56 @@ func TestShrinkingAgainstReferenceLibrary(t *testing.T) {
 		})
 	}
 }
+
+// TestWithoutStandardErrors: what has no formula says so everywhere and is resampled all the same; how often a regressor is kept is one less the share of
+// resamples in which it is exactly zero, and said where it changes from resample to resample.
+func TestWithoutStandardErrors(t *testing.T) {
+	raw, err := os.ReadFile(filepath.Join("..", "testdata", "hald", "data.csv"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	study := newStudy("heat = x1_c3a + x2_c3s + x3_c4af + x4_c2s")
+	study.Focal, study.Resamples, study.Simulations = []string{"x1_c3a"}, 200, 50
+	study.Errors = compare.ErrorSpec{Kind: compare.Robust}
+	c := runStudy(t, text(t, string(raw)), study)
+	for _, key := range []string{"elastic-net", "partial-least-squares"} {
+		a := find(t, c, key)
+		if a.Covariance != nil || a.NoCovariance() != a.Fitted.NoErrors || a.Fitted.NoErrors == "" {
+			t.Errorf("%s: covariance %v, reason %q", key, a.Covariance, a.NoCovariance())
+		}
+		for _, k := range a.Coefficients {
+			if !math.IsNaN(k.SE) || !math.IsNaN(k.MSE) || k.SEReason == "" || k.Resampled == nil || !(k.Resampled.SE > 0) {
+				t.Errorf("%s, %s: %+v", key, k.Name, k)
+			}
+		}
+		for _, s := range a.Simulated {
+			if !math.IsNaN(s.Coverage) || !(s.RMSE > 0) {
+				t.Errorf("%s, %s: coverage %v, root mean squared error %v", key, s.Truth, s.Coverage, s.RMSE)
+			}
+		}
+		for _, p := range c.Path(a) {
+			for _, k := range p.Coefficients {
+				if !math.IsNaN(k.SE) || math.IsNaN(k.Estimate) {
+					t.Errorf("%s: step %+v", key, k)
+				}
+			}
+		}
+	}
+	net := find(t, c, "elastic-net")
+	between := false
+	for _, k := range net.Coefficients[1:] {
+		r := k.Resampled
+		if z := r.Zero(); math.Abs(z+r.Positive+r.Negative-1) > 1e-9 {
+			t.Errorf("%s: shares %v, %v and %v", k.Name, r.Positive, r.Negative, z)
+		} else if z > 0 && z < 1 {
+			between = true
+		}
+	}
+	said := slices.ContainsFunc(net.Description.Notes, func(n remedy.Note) bool { return n.Code == "kept-in-resamples" })
+	if !between || !said {
+		t.Errorf("some regressor kept in some resamples only: %v; said: %v", between, said)
+	}
+	if k := find(t, c, "as-is"); slices.ContainsFunc(k.Description.Notes, func(n remedy.Note) bool { return n.Code == "kept-in-resamples" }) {
+		t.Error("the model left alone keeps everything, yet it is said how often")
+	}
+}

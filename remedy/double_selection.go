@@ -253,7 +253,7 @@ func (d doubleFit) describe(f *Final) Description {
 		}
 	}
 	out.Costs = append(out.Costs,
-		fmt.Sprintf("%d of %d controls are left out", len(d.controls)-len(chosen.union), len(d.controls)),
+		fmt.Sprintf("left out: %d of %d controls", len(d.controls)-len(chosen.union), len(d.controls)),
 		"the penalty is the one for errors of equal variance, sigma estimated in rounds; under unequal variances it can keep too few or too many",
 		"the standard error of a coefficient of interest leaves out the bias of controls that both choices miss, which small samples make likely (Wüthrich and Zhu 2023)")
 	return out

@@ -172,7 +172,7 @@ func (n netFit) describe(f *Final) Description {
 		d.Notes = append(d.Notes, Note{"penalty-at-edge", "no regressor is kept: the data support no slopes at all, or the equation is wrong"})
 	}
 	if len(gone) > 0 {
-		d.Costs = append(d.Costs, fmt.Sprintf("%d of %d regressors are set to zero; how often each one is over the resamples says how firm that is", len(gone), len(p.Names)))
+		d.Costs = append(d.Costs, fmt.Sprintf("set to zero: %d of %d regressors; how often each one is kept over the resamples says how firm that is", len(gone), len(p.Names)))
 	} else {
 		d.Costs = append(d.Costs, "every regressor is kept, each shrunken")
 	}
