@@ -60,10 +60,14 @@ type Net struct {
 	x        []float64
 	trial    []int
 
-	// Where every column is kept and the spectrum of C is known, nothing need be factorised.
-	all            *Spectrum
-	along, byEach  []float64 // V'r, V'signs
-	weights, known []float64 // known: the signs that byEach belongs to
+	// Where most columns are kept and the spectrum of C is known, it stands in for the factor.
+	all                *Spectrum
+	along, byEach      []float64 // V'r, V'signs
+	known, fresh       []float64 // the signs that byEach belongs to, zero at what is left out
+	turned             bool
+	weights, inverse   []float64
+	out                []int // what is left out
+	mu, small, columns []float64
 }
 
 // NewNet starts at zero. c and r are kept, not copied, and not changed.
@@ -72,13 +76,16 @@ func NewNet(c, r []float64) *Net {
 	return &Net{p: p, c: c, r: r, b: make([]float64, p), factor: make([]float64, p*p), x: make([]float64, p)}
 }
 
-// Know tells the spectrum of C, which saves work where every column is kept. One that is not of full rank is of no use and ignored.
+// Know tells the spectrum of C, which saves work where most columns are kept. One that is not of full rank is of no use and ignored.
 func (n *Net) Know(sp *Spectrum) {
 	if sp.Rank < n.p || len(sp.Cols) < n.p || n.p < 2 {
 		return
 	}
 	n.all = sp
-	n.along, n.byEach, n.weights = make([]float64, n.p), make([]float64, n.p), make([]float64, n.p)
+	b := make([]float64, 6*n.p)
+	for i, to := range []*[]float64{&n.along, &n.byEach, &n.known, &n.fresh, &n.weights, &n.inverse} {
+		*to = b[i*n.p : (i+1)*n.p]
+	}
 	turn(sp, n.r, n.along)
 }
 
@@ -90,25 +97,56 @@ func turn(sp *Spectrum, x, to []float64) {
 	}
 }
 
-// solveAll gives (C + l2)^-1 (r - l1 signs) for all columns, from the spectrum.
-func (n *Net) solveAll(x []float64, l1, l2 float64) {
-	same := len(n.known) == n.p
-	if !same {
-		n.known = make([]float64, n.p)
-	}
+// solveMost gives (C + l2)^-1 (r - l1 signs) for the active columns from the spectrum of all of them, those left out, J, being held at zero: with
+// M = V (Lambda + l2)^-1 V' it is M(r - l1 signs) - M_J mu, M_JJ mu = (M(r - l1 signs))_J. Cost O(p^2) for few left out, whatever l2.
+func (n *Net) solveMost(x []float64, l1, l2 float64) bool {
+	p := n.p
+	clear(n.fresh)
 	for i, j := range n.active {
-		same = same && n.known[j] == n.signs[i]
-		n.known[j] = n.signs[i]
+		n.fresh[j] = n.signs[i]
 	}
-	if !same {
+	if !n.turned || !slices.Equal(n.known, n.fresh) {
+		copy(n.known, n.fresh)
 		turn(n.all, n.known, n.byEach)
+		n.turned = true
 	}
 	for k, s := range n.all.Sigma {
-		n.weights[k] = (n.along[k] - l1*n.byEach[k]) / (s*s + l2)
+		n.inverse[k] = 1 / (s*s + l2)
+		n.weights[k] = (n.along[k] - l1*n.byEach[k]) * n.inverse[k]
+	}
+	n.out = n.out[:0]
+	for j, s := range n.known {
+		if s == 0 {
+			n.out = append(n.out, j)
+		}
+	}
+	if m := len(n.out); m > 0 {
+		n.mu = append(n.mu[:0], make([]float64, m)...)
+		n.small = append(n.small[:0], make([]float64, m*m)...)
+		n.columns = append(n.columns[:0], make([]float64, m*p)...)
+		for i, j := range n.out {
+			v, c := n.all.V[j*p:(j+1)*p], n.columns[i*p:(i+1)*p]
+			for k, w := range n.inverse {
+				c[k] = w * v[k]
+			}
+			n.mu[i] = dot(v, n.weights)
+			for h, l := range n.out[:i+1] {
+				n.small[i*m+h] = dot(c, n.all.V[l*p:(l+1)*p])
+			}
+		}
+		if !cholesky(n.small, m) {
+			return false
+		}
+		solveLower(n.small, m, n.mu)
+		solveUpper(n.small, m, n.mu)
+		for i, v := range n.mu {
+			axpy(-v, n.columns[i*p:(i+1)*p], n.weights)
+		}
 	}
 	for i, j := range n.active {
-		x[i] = dot(n.weights, n.all.V[j*n.p:(j+1)*n.p])
+		x[i] = dot(n.weights, n.all.V[j*p:(j+1)*p])
 	}
+	return true
 }
 
 // Solve returns the minimum at l1, l2 >= 0; the slice is reused by the next call.
@@ -129,9 +167,7 @@ func (n *Net) settle(l1, l2 float64) bool {
 	for len(n.active) > 0 {
 		m := len(n.active)
 		x := n.x[:m]
-		if m == n.p && n.all != nil {
-			n.solveAll(x, l1, l2)
-		} else {
+		if n.all == nil || l2 == 0 || 4*(n.p-m) > n.p || !n.solveMost(x, l1, l2) {
 			if !n.factorise(l2) {
 				return false
 			}
