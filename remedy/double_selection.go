@@ -21,7 +21,7 @@ var _ = register(Remedy{
 		"used here, of equal variance. All controls that matter are among the candidates.",
 	Buys: "A shorter list of controls without the usual price of choosing: a control that the first choice misses is caught by the second, so that the conventional " +
 		"standard error of the coefficients of interest stays valid in large samples.",
-	Costs: "In small samples the penalty can miss controls in both choices, and the bias of leaving them out can be as large as the standard error (Wüthrich and Zhu 2023). Nothing is " +
+	Costs: "In small samples the penalty can miss controls in both choices, and the bias of leaving them out can be large beside the standard error (Wüthrich and Zhu 2023). Nothing is " +
 		"won where a control is tangled with a regressor of interest: it predicts it, and is chosen. Coefficients of the controls are not for inference.",
 	Means:   "The coefficient of interest is a partial association beside the chosen controls; a control that is not chosen is set to zero, which is no finding that it has no effect.",
 	Referee: "Is it plausible that few controls matter? Which controls theory demands were not chosen? Would the coefficient move with all of them in, as when the model is left alone?",

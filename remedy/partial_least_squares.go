@@ -26,7 +26,7 @@ var _ = register(Remedy{
 		"if the directions use the dependent variable? Why should the coefficient of interest lie in these directions?",
 	Sources: []string{
 		"Wold, Ruhe, Wold and Dunn (1984), SIAM Journal on Scientific and Statistical Computing 5(3), 735-743",
-		"de Jong (1993), Chemometrics and Intelligent Laboratory Systems 18(3), 251-263",
+		"de Jong (1993), Chemometrics and Intelligent Laboratory Systems 18(3), 251-263 (the same fits by another recursion)",
 		"Frank and Friedman (1993), Technometrics 35(2), 109-135",
 		"Butler and Denham (2000), Journal of the Royal Statistical Society, Series B 62(3), 585-593 (some directions are stretched)",
 		"Krämer and Sugiyama (2011), Journal of the American Statistical Association 106(494), 697-705 (degrees of freedom)",
