@@ -460,7 +460,7 @@ func (c *Comparison) Path(a *Alternative) []PathPoint {
 	}
 	out := make([]PathPoint, len(t.Values))
 	parallel.Each(len(t.Values), 0, func(i int) {
-		f := &remedy.Fitted{Slopes: t.Slopes[i], Factor: t.Factor(i)}
+		f := &remedy.Fitted{Slopes: t.Slopes[i], Factor: t.Factor(i), NoErrors: a.Fitted.NoErrors}
 		if t.Cross != nil {
 			f.Cross = t.Cross(i)
 		}

@@ -41,14 +41,10 @@ func invented(b *testing.B, n, p int) (*dataset.Table, string) {
 func BenchmarkNested(b *testing.B) {
 	for _, size := range []struct{ n, p int }{{1000, 10}, {1000, 20}, {20000, 20}} {
 		table, eq := invented(b, size.n, size.p)
-		for _, key := range []string{"ridge", "components"} {
+		for _, key := range []string{"ridge", "components", "partial-least-squares", "elastic-net"} {
 			b.Run(fmt.Sprintf("%s/n=%d/p=%d", key, size.n, size.p), func(b *testing.B) {
 				s := newStudy(eq)
-				for _, off := range []string{"drop", "index", "center", "ridge", "components"} {
-					if off != key {
-						s.Remedies = append(s.Remedies, compare.RemedySetting{Remedy: off, Off: true})
-					}
-				}
+				s.Remedies = only(key)
 				b.ReportAllocs()
 				for b.Loop() {
 					if _, err := compare.Run(context.Background(), table, s, compare.Options{}); err != nil {

@@ -6,8 +6,10 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
+	"strings"
 	"sync"
 
+	"modelmend/fit/figures"
 	"modelmend/fit/folds"
 	"modelmend/fit/linear"
 	"modelmend/fit/reduction"
@@ -48,6 +50,17 @@ type Resampled struct {
 	Used         int // resamples in which the coefficient had a value
 	Acceleration float64
 	BiasOffset   float64 // z0: the normal quantile of the share of resamples below the estimate
+}
+
+// Zero is the share of resamples in which the coefficient was set to zero, NaN where there are fewer than two.
+func (r *Resampled) Zero() float64 {
+	if r.Used < 2 {
+		return math.NaN()
+	}
+	if v := 1 - r.Positive - r.Negative; v > 1e-9 { // the shares are sums of 1/n
+		return v
+	}
+	return 0
 }
 
 // TuningResampled is how often each value of a tuning was chosen.
@@ -350,10 +363,28 @@ func (c *Comparison) resample(ctx context.Context, red *reduction.Reduction, cho
 				list[j].Resampled = spread(&list[j], drawn.combine(i, list[j].weights), jack.combine(i, list[j].weights))
 			}
 		}
+		a.noteKept()
 		if t := a.Fitted.Tuning; t != nil && !t.Fixed {
 			a.TuningResampled = tuned(t.Values, drawn.chosen[i])
 		}
 	})
+}
+
+// noteKept says how often each regressor was kept, where some are set to zero in some resamples and kept in others.
+func (a *Alternative) noteKept() {
+	var parts []string
+	changes := false
+	for _, k := range a.Coefficients {
+		if k.Resampled == nil || k.Resampled.Used < 2 || k.Name == "constant" {
+			continue
+		}
+		z := k.Resampled.Zero()
+		changes = changes || (z > 0 && z < 1)
+		parts = append(parts, k.Name+" "+figures.Percent(1-z))
+	}
+	if changes {
+		a.Description.Notes = append(a.Description.Notes, remedy.Note{Code: "kept-in-resamples", Text: "kept in so many of the resamples: " + strings.Join(parts, ", ")})
+	}
 }
 
 // combine gives the combination w of (constant, slopes) in every resample of alternative i.

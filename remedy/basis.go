@@ -3,6 +3,7 @@ package remedy
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -193,6 +194,15 @@ func smallest(v []float64, later bool) int {
 		}
 	}
 	return best
+}
+
+// withFixed puts a value that the user fixed into an ascending grid, unless it is there, and returns its place.
+func withFixed(grid []float64, fixed float64) ([]float64, int) {
+	at, there := slices.BinarySearch(grid, fixed)
+	if there {
+		return grid, at
+	}
+	return slices.Insert(slices.Clone(grid), at, fixed), at
 }
 
 // say prints a number for prose.

@@ -185,10 +185,11 @@ type Tuning struct {
 	Values    []float64
 	MSE       []float64 // cross-validated mean squared error of each value; NaN when fixed by the user and no split was given
 	MSESD     []float64 // its standard error over the splits
-	Degrees   []float64 // effective degrees of freedom of each value
+	Degrees   []float64 // effective degrees of freedom of each value; NaN where no formula gives them
+	OnSquares bool      // the penalty is on squares alone, so that (n-1) times it is a multiple of each regressor's variance
 	// Only for Training.Final:
 	Slopes     [][]float64               // of each value
-	Factor     func(value int) []float64 // covariance factor of each value
+	Factor     func(value int) []float64 // covariance factor of each value; gives nil where Fitted.NoErrors says why
 	Cross      func(value int) []float64 // as Fitted.Cross; nil: equals Factor
 	Candidates []Candidate
 	Components []Component

@@ -79,28 +79,12 @@ func (r ridgeFit) values() ([]float64, int) {
 	if !ok {
 		return r.p.Penalties, -1
 	}
-	var out []float64
-	at := -1
-	for _, v := range r.p.Penalties {
-		if at < 0 && fixed <= v {
-			at = len(out)
-			out = append(out, fixed)
-			if v == fixed {
-				continue
-			}
-		}
-		out = append(out, v)
-	}
-	if at < 0 {
-		at = len(out)
-		out = append(out, fixed)
-	}
-	return out, at
+	return withFixed(r.p.Penalties, fixed)
 }
 
 func (r ridgeFit) learn(t Training) *Fitted {
 	values, at := r.values()
-	tuning := &Tuning{Parameter: "penalty", Fixed: at >= 0, Values: values}
+	tuning := &Tuning{Parameter: "penalty", Fixed: at >= 0, Values: values, OnSquares: true}
 	if at < 0 || t.Final {
 		tuning.MSE, tuning.MSESD = tune(t.Inner, len(values), func(s Split) []float64 {
 			sp := s.Train.Spectrum(r.spare)

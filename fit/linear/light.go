@@ -168,35 +168,40 @@ func (l *light) scaled() (a, rs, scale []float64) {
 func cholesky(a []float64, p int) bool {
 	for k := range p {
 		row := a[k*p : k*p+k]
-		d := a[k*p+k]
-		for _, v := range row {
-			d -= v * v
-		}
+		d := a[k*p+k] - dot(row, row)
 		if !(d > lightTolerance) {
 			return false
 		}
 		root := math.Sqrt(d)
 		a[k*p+k] = root
 		for i := k + 1; i < p; i++ {
-			v := a[i*p+k]
-			ri := a[i*p : i*p+k][:len(row)]
-			for c, x := range row {
-				v -= ri[c] * x
-			}
-			a[i*p+k] = v / root
+			a[i*p+k] = (a[i*p+k] - dot(row, a[i*p:i*p+k])) / root
 		}
 	}
 	return true
 }
 
+// dot is the inner product of two slices of one length, added up in four sums, so that one addition need not wait for the last.
+func dot(a, b []float64) float64 {
+	var s0, s1, s2, s3 float64
+	b = b[:len(a)]
+	for len(a) >= 4 && len(b) >= 4 {
+		s0 += a[0] * b[0]
+		s1 += a[1] * b[1]
+		s2 += a[2] * b[2]
+		s3 += a[3] * b[3]
+		a, b = a[4:], b[4:]
+	}
+	for i, x := range a {
+		s0 += x * b[i]
+	}
+	return (s0 + s1) + (s2 + s3)
+}
+
 // solveLower overwrites b by L^-1 b, solveUpper by L'^-1 b.
 func solveLower(l []float64, p int, b []float64) {
 	for i := range p {
-		v := b[i]
-		for c, x := range l[i*p : i*p+i] {
-			v -= x * b[c]
-		}
-		b[i] = v / l[i*p+i]
+		b[i] = (b[i] - dot(l[i*p:i*p+i], b[:i])) / l[i*p+i]
 	}
 }
 

@@ -233,9 +233,9 @@ func buildCoefficient(c compare.Coefficient) Coefficient {
 	for _, e := range c.Errors {
 		out.Errors = append(out.Errors, StandardError{e.Kind, Num(e.SE), e.Reason, Num(e.DF), Num(e.T), Num(e.P), Num(e.Low), Num(e.High)})
 	}
-	if r := c.Resampled; r != nil && c.Status != remedy.Zero {
+	if r := c.Resampled; r != nil && (c.Status != remedy.Zero || r.Zero() < 1) {
 		out.Resampled = &Resampled{StandardError: Num(r.SE), Low: Num(r.Low), High: Num(r.High), BiasCorrected: Limits{Num(r.AccLow), Num(r.AccHigh)},
-			SharePositive: Num(r.Positive), ShareNegative: Num(r.Negative), Used: r.Used}
+			SharePositive: Num(r.Positive), ShareNegative: Num(r.Negative), ShareZero: Num(r.Zero()), Used: r.Used}
 	}
 	return out
 }
@@ -331,7 +331,9 @@ func buildTuning(c *compare.Comparison, a *compare.Alternative) *Tuning {
 		if c.Design.Constant {
 			n--
 		}
-		out.PenaltyTimes = Num(value * n)
+		if t.OnSquares {
+			out.PenaltyTimes = Num(value * n)
+		}
 	} else {
 		out.Components = Num(value)
 	}

@@ -230,7 +230,7 @@ type LedgerOther struct {
 // Alternative is one remedy fitted to the common problem.
 type Alternative struct {
 	Key               string          `json:"key"`    // remedy, remedy:what or remedy:what:how
-	Remedy            string          `json:"remedy"` // as-is | drop | index | components | ridge | center
+	Remedy            string          `json:"remedy"` // as-is | drop | drop-by-rule | select | center | index | components | partial-least-squares | ridge | elastic-net
 	Label             string          `json:"label"`  // short, for a rung
 	Summary           string          `json:"summary"`
 	Coefficients      []Coefficient   `json:"coefficients"` // the constant first where there is one, then every regressor, the same order everywhere
@@ -270,7 +270,7 @@ type Coefficient struct {
 	EstimatedMSE        Num             `json:"estimatedMSE"`
 	PosteriorSD         Num             `json:"posteriorSD"`
 	Errors              []StandardError `json:"errors"`    // every kind computed, the chosen one first; empty for a coefficient set to zero or not identified
-	Resampled           *Resampled      `json:"resampled"` // null when the procedure was not resampled
+	Resampled           *Resampled      `json:"resampled"` // null when the procedure was not resampled, or the coefficient is zero in every resample
 }
 
 // StandardError is the standard error of one kind.
@@ -300,7 +300,8 @@ type Resampled struct {
 	BiasCorrected Limits `json:"biasCorrected"` // and accelerated; null where it cannot be formed
 	SharePositive Num    `json:"sharePositive"`
 	ShareNegative Num    `json:"shareNegative"`
-	Used          int    `json:"used"` // resamples in which the coefficient had a value
+	ShareZero     Num    `json:"shareZero"` // in which the coefficient was set to zero: one less this is how often it was kept
+	Used          int    `json:"used"`      // resamples in which the coefficient had a value
 }
 
 // Limits are the ends of an interval.
@@ -369,10 +370,10 @@ type Tuning struct {
 	Parameter        string           `json:"parameter"` // penalty | components
 	Rule             string           `json:"rule"`      // cross-validation | fixed by the user
 	Penalty          Num              `json:"penalty"`
-	PenaltyTimes     Num              `json:"penaltyTimes"` // penalty * (n-1): the multiplier of each regressor's variance in the sum of squares
+	PenaltyTimes     Num              `json:"penaltyTimes"` // penalty * (n-1): the multiplier of each regressor's variance in the sum of squares; null where the penalty is not on squares alone
 	Components       Num              `json:"components"`
-	EffectiveDegrees Num              `json:"effectiveDegrees"`
-	Chosen           int              `json:"chosen"` // index into Path
+	EffectiveDegrees Num              `json:"effectiveDegrees"` // null where no formula gives them
+	Chosen           int              `json:"chosen"`           // index into Path
 	Candidates       []RuleValue      `json:"candidates"`
 	Path             []PathPoint      `json:"path"`
 	AsGoodAs         AsGoodAs         `json:"asGoodAs"`

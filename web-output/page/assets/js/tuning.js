@@ -39,5 +39,6 @@ export function describe(t, i) {
   const p = t.path[i];
   const value = t.parameter === "penalty" ? (p.value === 0 ? "0 (least squares)" : figure(p.value, 3)) : `${p.value} of ${t.path.length - 1}`;
   const error = p.error === null ? "" : `; cross-validated error ${figure(root(p.error), 4)}`;
-  return `${value}; ${figure(p.effectiveDegrees, 3)} effective degrees of freedom${error}${i === t.chosen ? "; the chosen value" : ""}`;
+  const degrees = p.effectiveDegrees === null ? "" : `; ${figure(p.effectiveDegrees, 3)} effective degrees of freedom`;
+  return `${value}${degrees}${error}${i === t.chosen ? "; the chosen value" : ""}`;
 }
