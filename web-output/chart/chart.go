@@ -101,6 +101,15 @@ func short(n view.Num) view.Num {
 	return view.Num(v)
 }
 
+// coarse rounds to four significant digits: still finer than a pixel of a path.
+func coarse(n view.Num) view.Num {
+	v, err := strconv.ParseFloat(strconv.FormatFloat(float64(n), 'g', 4, 64), 64)
+	if err != nil {
+		return n
+	}
+	return view.Num(v)
+}
+
 func numbered(n int) []string {
 	out := make([]string, n)
 	for i := range out {
@@ -149,7 +158,7 @@ func paths(r *view.Results, a view.Alternative) *charts.Line {
 		var data []opts.LineData
 		for _, p := range a.Tuning.Path[first:] {
 			v := view.Num(float64(p.Coefficients[offset+j].Estimate) * float64(g.SD))
-			data = append(data, opts.LineData{Value: []any{short(p.Value), short(v)}})
+			data = append(data, opts.LineData{Value: []any{coarse(p.Value), coarse(v)}})
 		}
 		c.AddSeries(fmt.Sprintf("c%d", j), data, charts.WithSeriesId(fmt.Sprintf("slope-%d", j)), charts.WithLineChartOpts(opts.LineChart{ShowSymbol: opts.Bool(a.Tuning.Parameter != "penalty")}))
 	}
@@ -165,7 +174,7 @@ func errorCurve(a view.Alternative) *charts.Line {
 		charts.WithYAxisOpts(opts.YAxis{Type: "value", Name: "mean squared error", Scale: opts.Bool(true)}))
 	var data []opts.LineData
 	for _, p := range a.Tuning.Path[first:] {
-		data = append(data, opts.LineData{Value: []any{p.Value, p.Error}})
+		data = append(data, opts.LineData{Value: []any{short(p.Value), short(p.Error)}})
 	}
 	c.AddSeries("c0", data, charts.WithSeriesId("error"), charts.WithLineChartOpts(opts.LineChart{ShowSymbol: opts.Bool(a.Tuning.Parameter != "penalty")}))
 	if r := a.Tuning.Resampled; r != nil && len(r.Shares) == len(a.Tuning.Path) {
@@ -195,7 +204,7 @@ func folds(r *view.Results) *charts.Scatter {
 	for i, a := range r.Alternatives[1:] {
 		for k, f := range a.OutOfSample.Folds {
 			base := r.Alternatives[0].OutOfSample.Folds[k].MSE
-			data = append(data, opts.ScatterData{Value: []any{view.Num(float64(f.MSE) - float64(base)), i}})
+			data = append(data, opts.ScatterData{Value: []any{short(view.Num(float64(f.MSE) - float64(base))), i}})
 		}
 	}
 	c.AddSeries("c0", data, charts.WithSeriesId("differences"))

@@ -27,7 +27,7 @@ var files embed.FS
 // styles and modules are joined in this order.
 var (
 	styles  = []string{"base", "table", "figure", "print"}
-	modules = []string{"format", "state", "interval", "charts", "kinds", "ladder", "matrix", "tuning", "truths", "copy", "main"}
+	modules = []string{"format", "state", "paths", "interval", "charts", "kinds", "ladder", "matrix", "tuning", "truths", "copy", "main"}
 )
 
 // assets are the parts that are the same for every page.
@@ -124,6 +124,34 @@ func slim(r *view.Results) *view.Results {
 	return &out
 }
 
+// step packs one step of a path: coefficients, then derived ones, four numbers each, as paths.js unpacks them.
+type step [2][][4]view.Num
+
+// packPaths takes the coefficients of the paths out of slimmed results and returns them packed, by place of the alternative: names would take up more
+// room than the numbers.
+func packPaths(r *view.Results) map[int][]step {
+	out := map[int][]step{}
+	pack := func(list []view.PathCoefficient) [][4]view.Num {
+		packed := [][4]view.Num{}
+		for _, c := range list {
+			packed = append(packed, [4]view.Num{c.Estimate, c.StandardError, c.EstimatedBias, c.EstimatedMSE})
+		}
+		return packed
+	}
+	for i := range r.Alternatives {
+		t := r.Alternatives[i].Tuning
+		if t == nil {
+			continue
+		}
+		for k := range t.Path {
+			p := &t.Path[k]
+			out[i] = append(out[i], step{pack(p.Coefficients), pack(p.Derived)})
+			p.Coefficients, p.Derived = []view.PathCoefficient{}, []view.PathCoefficient{}
+		}
+	}
+	return out
+}
+
 // lighter rounds what was resampled.
 func lighter(list []view.Coefficient) []view.Coefficient {
 	out := append([]view.Coefficient{}, list...)
@@ -180,12 +208,15 @@ func Write(w io.Writer, r *view.Results) error {
 		return err
 	}
 	choices, errors := choicesOf(r), errorsIn(r)
+	lean := slim(r)
+	paths := packPaths(lean)
 	data, err := json.Marshal(struct {
-		Results *view.Results `json:"results"`
-		Charts  chart.Options `json:"charts"`
-		Choices []choice      `json:"choices"`
-		Errors  []errorsOf    `json:"errors"`
-	}{slim(r), charts, choices, errors})
+		Results *view.Results  `json:"results"`
+		Paths   map[int][]step `json:"paths"`
+		Charts  chart.Options  `json:"charts"`
+		Choices []choice       `json:"choices"`
+		Errors  []errorsOf     `json:"errors"`
+	}{lean, paths, charts, choices, errors})
 	if err != nil {
 		return fmt.Errorf("the page's data cannot be written: %w", err)
 	}

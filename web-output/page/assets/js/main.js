@@ -1,5 +1,6 @@
 // Starts the page: reads the data block, mounts the modules, keeps state and address together.
 import { readState, writeState, emptyState } from "./state.js";
+import { unpackPaths } from "./paths.js";
 import { mountKinds } from "./kinds.js";
 import { mountLadder } from "./ladder.js";
 import { mountMatrix } from "./matrix.js";
@@ -10,6 +11,7 @@ import { mountCopy } from "./copy.js";
 
 function start() {
   const data = JSON.parse(document.getElementById("view").textContent);
+  unpackPaths(data.results.alternatives, data.paths);
   const page = { results: data.results, choices: data.choices, charts_: data.charts, errors: data.errors, state: emptyState() };
   const limits = {
     choices: page.choices.length, rungs: page.results.alternatives.length, kinds: page.results.run.standardErrors.length,
