@@ -131,7 +131,7 @@ func heat(id string, columns, rows int, low, high float32, at func(i, j int) vie
 	for j := range rows {
 		for i := range columns {
 			if v := at(i, j); !v.IsNone() {
-				data = append(data, opts.HeatMapData{Value: []any{i, j, v}})
+				data = append(data, opts.HeatMapData{Value: []any{i, j, short(v)}})
 			}
 		}
 	}
