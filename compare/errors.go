@@ -61,6 +61,10 @@ type StandardError struct {
 	Low, High float64
 }
 
+// closest is the ratio of the smallest to the largest singular value of the scaled regressors below which the other kinds of error are not stated: rows are
+// multiplied in float64, so that about 16 digits less twice its logarithm are right, four at this mark.
+const closest = 1e-6
+
 // leastClusters is the number of clusters below which their errors are doubted: common practice, no source.
 const leastClusters = 30
 
@@ -358,6 +362,11 @@ func (c *Comparison) sandwich(ctx context.Context, opt Options, alternatives []*
 			a.middles.of[Autocorrelation] = m
 		}
 		a.covariances = map[string][]float64{}
+		if sp := a.sample.Spectrum(nil); sp.Rank > 0 && sp.Sigma[sp.Rank-1] < closest*sp.Sigma[0] {
+			for name := range a.middles.of {
+				a.middles.reason[name] = "the regressors are too close to an exact dependency for these errors in float64 (singular values a million apart); the classical ones keep their digits"
+			}
+		}
 		for name, m := range a.middles.of {
 			if a.middles.reason[name] == "" && a.Fitted.Factor != nil {
 				a.covariances[name] = fr.between(m, a.Fitted)

@@ -365,3 +365,25 @@ func TestErrorsAgainstLibrary(t *testing.T) {
 	run("wages", wages, "occupation", func(s *compare.Study) { s.Clusters = []string{"occupation"} }, values.Wages.Regressors, values.Wages.Occupation)
 	run("wages", wages, "two-way", func(s *compare.Study) { s.Clusters = []string{"occupation", "sector"} }, values.Wages.Regressors, values.Wages.TwoWay)
 }
+
+// TestErrorsTooClose: regressors that all but depend on each other leave robust errors without a value, and a reason; classical ones are computed in
+// double-double and stay.
+func TestErrorsTooClose(t *testing.T) {
+	rng := rand.New(rand.NewPCG(1, 6))
+	var cells [][]float64
+	for range 40 {
+		x := rng.NormFloat64()
+		cells = append(cells, []float64{x + rng.NormFloat64(), x, x + 1e-7*rng.NormFloat64()})
+	}
+	c, err := compare.Run(context.Background(), numbers(t, []string{"y", "a", "b"}, cells), newStudy("y = a + b"), compare.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	k := coefficient(t, c.Alternatives[0], "a")
+	if e := kindOf(t, k, "robust"); !math.IsNaN(e.SE) || !strings.Contains(e.Reason, "too close") {
+		t.Errorf("robust %+v", e)
+	}
+	if e := kindOf(t, k, "classical"); !(e.SE > 1e5) {
+		t.Errorf("classical %+v", e)
+	}
+}
